@@ -1,0 +1,1 @@
+"""Files in: boundaries, laboratory tables, layers; recognised, converted, checked."""

@@ -1,0 +1,1 @@
+"""Spreaders, sprayers, loads: from a boron rate to what the machine does."""

@@ -1,0 +1,1 @@
+"""The steps from samples to rates: frozen value in, frozen value out."""

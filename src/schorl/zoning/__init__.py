@@ -1,0 +1,1 @@
+"""Clusters, counts and shapes of management zones: arrays and geometry, no files."""
