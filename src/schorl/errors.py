@@ -51,7 +51,9 @@ class SchorlError(Exception):
         Used where no finding forces one.
     """
 
-    def __init__(self, findings: Sequence[Found], *, exit_code: int = Exit.NO_HONEST_ANSWER) -> None:
+    def __init__(
+        self, findings: Sequence[Found], *, exit_code: int = Exit.NO_HONEST_ANSWER
+    ) -> None:
         self.findings = tuple(findings)
         forced = sorted(found.exit for found in self.findings if found.exit)
         self.exit_code = int(forced[0]) if forced else int(exit_code)

@@ -166,9 +166,15 @@ def _rate(zone: Zone, boron: float, kg_ha: float, ruled: Limit) -> ZoneRate:
         ruled_by=ruled,
         limits_kg_ha={"rate cap": 2.24, "absolute limit": 3.36, "chance of excess": 2.9},
         outlook=Outlook(
-            short_before=0.93, short_after=0.41, over_before=0.0, over_after=0.02,
-            short_before_ha=0.93 * zone.area_ha, short_after_ha=0.41 * zone.area_ha,
-            over_before_ha=0.0, over_after_ha=0.02 * zone.area_ha, loss_kg=1.5,
+            short_before=0.93,
+            short_after=0.41,
+            over_before=0.0,
+            over_after=0.02,
+            short_before_ha=0.93 * zone.area_ha,
+            short_after_ha=0.41 * zone.area_ha,
+            over_before_ha=0.0,
+            over_after_ha=0.02 * zone.area_ha,
+            loss_kg=1.5,
         ),
         doubled_pass_mg_kg=boron + 2 * kg_ha / 1.4,
         samples=18,
@@ -266,8 +272,13 @@ def example_record() -> RunRecord:
         advice=("Zone 1 is sandy and low in organic matter: two passes lose less to leaching.",),
         sources=(
             {
-                "table": "crops", "row": "sugar beet", "figure": "broadcast cap",
-                "value": "2.24", "unit": "kg B/ha", "status": "PROPOSAL", "source": "table 04b",
+                "table": "crops",
+                "row": "sugar beet",
+                "figure": "broadcast cap",
+                "value": "2.24",
+                "unit": "kg B/ha",
+                "status": "PROPOSAL",
+                "source": "table 04b",
             },
         ),
     )
@@ -286,9 +297,7 @@ def example_record() -> RunRecord:
             placement=Placement.BROADCAST,
             machine=Machine(working_width_m=24.0, hopper_kg=600.0),
         ),
-        findings=(
-            finding("JOB-DEFAULT", where="job", what="working width 24 m was assumed"),
-        ),
+        findings=(finding("JOB-DEFAULT", where="job", what="working width 24 m was assumed"),),
         recognised=(
             Recognition(
                 what="boron", where="soil.csv, column `B (ppm)`", how="available boron in mg/kg"

@@ -25,8 +25,5 @@ def locked(values: ArrayLike, dtype: Any = np.float64) -> Any:
 def lock(value: object, **arrays: ArrayLike) -> None:
     """Store locked copies in the fields of a frozen dataclass, for use in ``__post_init__``."""
     for name, array in arrays.items():
-        dtype = np.asarray(array).dtype
-        kind: type[Any] = np.bool_ if dtype == bool else np.float64
-        if np.issubdtype(dtype, np.integer):
-            kind = np.intp
-        object.__setattr__(value, name, locked(array, kind))
+        kind = {"b": np.bool_, "i": np.intp, "u": np.intp}.get(np.asarray(array).dtype.kind)
+        object.__setattr__(value, name, locked(array, kind or np.float64))

@@ -114,8 +114,10 @@ def lay_grid(boundary: Area, *, cell_m: float) -> CellGrid:
     if not inside.any():
         half = cell_m / 2
         boxes = shapely.box(
-            east_grid.ravel() - half, north_grid.ravel() - half,
-            east_grid.ravel() + half, north_grid.ravel() + half,
+            east_grid.ravel() - half,
+            north_grid.ravel() - half,
+            east_grid.ravel() + half,
+            north_grid.ravel() + half,
         )
         inside = shapely.intersects(boundary, boxes)
     return CellGrid(

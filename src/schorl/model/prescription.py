@@ -54,8 +54,18 @@ class CellNeed:
     hot: Flags
 
     def __post_init__(self) -> None:
-        names = ("need_mean_kg_ha", "need_sd_kg_ha", "boron_mg_kg", "boron_location", "boron_sd",
-                 "target_mg_kg", "ceiling_mg_kg", "mass_need", "mass_ceiling", "rate_cap_kg_ha")
+        names = (
+            "need_mean_kg_ha",
+            "need_sd_kg_ha",
+            "boron_mg_kg",
+            "boron_location",
+            "boron_sd",
+            "target_mg_kg",
+            "ceiling_mg_kg",
+            "mass_need",
+            "mass_ceiling",
+            "rate_cap_kg_ha",
+        )
         lock(self, **{name: getattr(self, name) for name in names})
         object.__setattr__(self, "hot", locked(self.hot, np.bool_))
 

@@ -1,0 +1,1 @@
+"""The order of the steps, from a checked job to a written pack."""
