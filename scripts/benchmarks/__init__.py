@@ -1,0 +1,1 @@
+"""Benchmarks, one a part."""

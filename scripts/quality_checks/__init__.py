@@ -1,0 +1,1 @@
+"""Quality checks, one a part."""

@@ -1,0 +1,5 @@
+"""``python -m schorl``."""
+
+from schorl.cli import main
+
+main()
