@@ -22,9 +22,9 @@ from schorl.model.arrays import Floats
 from schorl.model.variogram import Family, Support, VariogramFit
 
 FAMILIES: tuple[Family, ...] = ("spherical", "exponential", "matern32")
-GRID_RANGES = 48
+GRID_RANGES = 52
 #: Ranges tried, as shares of the largest distance between samples.
-SHORTEST, LONGEST = 0.02, 10.0
+SHORTEST, LONGEST = 0.02, 30.0
 MOST_FOR_FIT = 600  # beyond this many samples the fit takes an evenly spread subset
 ANISOTROPY_FROM = 100
 

@@ -12,7 +12,7 @@ Family = Literal["spherical", "exponential", "matern32"]
 #: Practical range over scale: the spherical's scale is its range; the exponential reaches 95 % of
 #: its partial sill at 3 scales (1 - exp(-3) = 0.950); the Matérn of smoothness 3/2 with
 #: correlation (1 + s) exp(-s), s = sqrt(3) h / scale, at 2.7389 scales.
-RANGE_OVER_SCALE = {"spherical": 1.0, "exponential": 2.995732273553991, "matern32": 2.738921}
+RANGE_OVER_SCALE = {"spherical": 1.0, "exponential": 3.0, "matern32": 2.738921}
 SampleKind = Literal["point", "cores", "zone"]
 
 
@@ -74,8 +74,7 @@ class Variogram:
     @property
     def scale_m(self) -> float:
         """The family's raw scale (see the table above)."""
-        ratio = 3.0 if self.family == "exponential" else RANGE_OVER_SCALE[self.family]
-        return self.practical_range_m / ratio
+        return self.practical_range_m / RANGE_OVER_SCALE[self.family]
 
     @property
     def micro_variance(self) -> float:
