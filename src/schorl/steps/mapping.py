@@ -251,9 +251,7 @@ def _quality(data: _Data, fitted: _Fitted) -> LeaveOneOut:
 def _left_out(data: _Data, fitted: _Fitted) -> tuple[Floats, Floats]:
     if fitted.fit.nugget + fitted.fit.partial_sill <= 0:
         return np.zeros(len(data.values)), np.ones(len(data.values))
-    return leave_one_out(
-        data.places, fitted.middle, fitted.fit.variogram, support=data.support
-    )
+    return leave_one_out(data.places, fitted.middle, fitted.fit.variogram, support=data.support)
 
 
 def _verdict(data: _Data, fit: VariogramFit, quality: LeaveOneOut) -> tuple[Verdict, str]:

@@ -1,0 +1,365 @@
+"""What the soil of each cell asks for and bears: target, ceiling, need, cap, hot spots."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import date
+
+import numpy as np
+import shapely
+
+from schorl.agronomy.caps import absolute_limit_kg_ha, rate_cap
+from schorl.agronomy.chances import chance_over_ceiling
+from schorl.agronomy.crops import Crop, crop_named
+from schorl.agronomy.soil_mass import (
+    bulk_density_g_cm3,
+    ceiling_depth_cm,
+    kg_ha_per_mg_kg,
+    need_depth_cm,
+)
+from schorl.agronomy.tables import limit, row_of, table, trace
+from schorl.errors import Refusal
+from schorl.findings import Finding, finding
+from schorl.model.arrays import Flags, Floats
+from schorl.model.field import CellGrid
+from schorl.model.prescription import CellNeed
+from schorl.model.samples import SampleSet
+from schorl.model.settings import AppliedBoron, RunSettings
+from schorl.model.surface import Surface
+from schorl.steps.limits_of_soil import ceiling_for, hot_water, target_for
+
+G_PER_HA_FROM_MM = 10.0  # 1 mg/L x 1 mm = 10 g/ha, arithmetic
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Soil:
+    """Clay, organic matter and density where they are asked for, ``(n,)`` each."""
+
+    clay_pct: Floats
+    organic_matter_pct: Floats
+    density_g_cm3: Floats
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Assessed:
+    """The cells' need and what was noticed and used on the way."""
+
+    need: CellNeed
+    sample_need_kg_ha: Floats
+    crop: Crop
+    findings: tuple[Finding, ...]
+    sources: tuple[Mapping[str, str], ...]
+
+
+def assess_cells(
+    samples: SampleSet, surfaces: Mapping[str, Surface], grid: CellGrid, settings: RunSettings
+) -> Assessed:
+    """Need, ceiling and cap of every cell.
+
+    Raises
+    ------
+    UsageProblem
+        Unknown crop or region (exit 2).
+    Refusal
+        Limits that do not belong to the extraction method, no clay or organic matter, an organic
+        soil without density, a spreader that is too uneven (exit 4); all at once.
+    """
+    crop = crop_named(settings.crop.crop)
+    found: list[Finding] = []
+    _refuse_unknown(samples, surfaces, settings, found)
+    soil = _soil(samples, surfaces, settings, found)
+    target, sources = target_for(crop, settings, soil.clay_pct)
+    ceiling, more = ceiling_for(
+        crop, settings, soil.clay_pct, soil.organic_matter_pct, builtin=hot_water(samples)
+    )
+    target, held = _below_ceiling(target, ceiling, settings)
+    if held:
+        what = f"the target was lowered to {target.min():.2f} mg/kg at the lowest"
+        found.append(finding("RATE-CEILING-TARGET", where="target", what=what))
+    need = _need(samples, surfaces, grid, settings, crop, soil, target, ceiling)
+    at_samples = _need_at_samples(samples, grid, need)
+    found.extend(_status_notes([*sources, *more]))
+    if crop.perennial:
+        what = f"{crop.name}: only the yearly cap is given here"
+        found.append(finding("RATE-PERENNIAL", where="crop", what=what))
+    cap = rate_cap(crop, settings.placement, settings.overrides)
+    return Assessed(
+        need=need,
+        sample_need_kg_ha=at_samples,
+        crop=crop,
+        findings=tuple(found),
+        sources=(*sources, *more, trace(cap.table, cap.row, cap.kg_ha)),
+    )
+
+
+def _refuse_unknown(
+    samples: SampleSet,
+    surfaces: Mapping[str, Surface],
+    settings: RunSettings,
+    found: list[Finding],
+) -> None:
+    """Everything that makes an honest rate impossible, said together."""
+    campaign, crop = samples.campaign, settings.crop
+    own = crop.target_mg_kg is not None or bool(crop.own_targets)
+    own_limits = own and crop.ceiling_mg_kg is not None
+    bad: list[Finding] = []
+    if not hot_water(samples) and not own_limits:
+        bad.append(
+            finding(
+                "RATE-METHOD",
+                where="boron",
+                what=f"boron was extracted with {campaign.method}, the limits are for hot water; "
+                + _published(campaign.method),
+            )
+        )
+    if campaign.per_volume and not own_limits:
+        bad.append(
+            finding("RATE-VOLUME", where="boron", what="boron is reported per litre of soil")
+        )
+    if "clay" not in surfaces and not own_limits and not crop.texture:
+        bad.append(finding("RATE-CLAY", where="clay", what="clay is neither measured nor declared"))
+    if (
+        "organic_matter" not in surfaces
+        and crop.bulk_density_g_cm3 is None
+        and not _volume(samples)
+    ):
+        what = "organic matter is neither measured nor declared"
+        bad.append(finding("RATE-OM", where="organic matter", what=what))
+    if settings.machine.spread_cv_pct > limit("spread-cv-most"):
+        what = f"the spreader's CV is {settings.machine.spread_cv_pct:g} %"
+        bad.append(finding("RATE-CV", where="machine", what=what))
+    if bad:
+        raise Refusal([*found, *bad])
+
+
+def _published(method: str) -> str:
+    for row in table("methods"):
+        if method.lower() in (row["id"], *row["aliases"].split("|")):
+            return row["note"]
+    return "nothing is known of limits for this method"
+
+
+def _volume(samples: SampleSet) -> bool:
+    return samples.campaign.per_volume
+
+
+def _soil(
+    samples: SampleSet,
+    surfaces: Mapping[str, Surface],
+    settings: RunSettings,
+    found: list[Finding],
+) -> Soil:
+    crop = settings.crop
+    cells = surfaces["boron"].grid.n_cells
+    clay = _cells_of(surfaces, "clay", cells, default=_texture_figure(crop.texture, "clay_pct"))
+    organic = _cells_of(surfaces, "organic_matter", cells, default=2.5)
+    if crop.bulk_density_g_cm3 is not None:
+        density = np.full(cells, crop.bulk_density_g_cm3)
+    elif samples.campaign.per_volume:
+        density = np.ones(cells)
+    else:
+        _refuse_peat(organic)
+        density = bulk_density_g_cm3(_sand(samples, settings, clay, found), clay, organic)
+    return Soil(clay_pct=clay, organic_matter_pct=organic, density_g_cm3=density)
+
+
+def _cells_of(surfaces: Mapping[str, Surface], name: str, cells: int, *, default: float) -> Floats:
+    return surfaces[name].estimate if name in surfaces else np.full(cells, default)
+
+
+def _texture_figure(texture: str, column: str) -> float:
+    """Middle of a named texture class; a loam's where none is named and none is needed."""
+    return float(row_of("textures", texture.lower() or "loam")[column])
+
+
+def _refuse_peat(organic_pct: Floats) -> None:
+    most = limit("organic-from")
+    if organic_pct.max() > most:
+        what = f"organic matter reaches {organic_pct.max():.0f} %, above {most:g} %"
+        raise Refusal([finding("RATE-ORGANIC", where="organic matter", what=what)])
+
+
+def _sand(samples: SampleSet, settings: RunSettings, clay: Floats, found: list[Finding]) -> Floats:
+    if settings.crop.sand_pct is not None:
+        return np.full(len(clay), settings.crop.sand_pct)
+    if "sand" in samples.constants:
+        return np.full(len(clay), samples.constants["sand"])
+    if "sand" in samples.properties:
+        values = samples.properties["sand"].values
+        return np.full(len(clay), float(np.nanmean(values)))
+    if settings.crop.texture:
+        return np.full(len(clay), _texture_figure(settings.crop.texture, "sand_pct"))
+    sand = (100.0 - clay) / 2.0
+    what = f"sand was taken as half of what is not clay, {sand.mean():.0f} % on average"
+    found.append(finding("RATE-SAND", where="soil", what=what))
+    return sand
+
+
+def _below_ceiling(target: Floats, ceiling: Floats, settings: RunSettings) -> tuple[Floats, bool]:
+    room = limit("target-below-ceiling")
+    if settings.crop.interpretation == "texture line":
+        room = limit("line-below-ceiling")
+    most = np.maximum(ceiling - room, 0.0)
+    return np.minimum(target, most), bool((target > most + 1e-12).any())
+
+
+def _need(
+    samples: SampleSet,
+    surfaces: Mapping[str, Surface],
+    grid: CellGrid,
+    settings: RunSettings,
+    crop: Crop,
+    soil: Soil,
+    target: Floats,
+    ceiling: Floats,
+) -> CellNeed:
+    boron = surfaces["boron"]
+    stones = settings.crop.stones_pct
+    depth = need_depth_cm(samples.campaign.depth_cm)
+    mass = kg_ha_per_mg_kg(soil.density_g_cm3, depth, stones_pct=stones)
+    top = ceiling_depth_cm(settings.crop.incorporation_cm)
+    log = boron.transform == "log"
+    spread = _with_target_spread(boron, surfaces, crop, settings, soil, target)
+    credit, used = _credits(samples, grid, settings, soil)
+    cap = rate_cap(crop, settings.placement, settings.overrides).kg_ha
+    most = min(cap, absolute_limit_kg_ha(crop, settings.overrides))
+    bare = CellNeed(
+        need_mean_kg_ha=(target - boron.estimate) * mass - credit,
+        need_sd_kg_ha=_own_sd(boron, spread) * mass,
+        boron_mg_kg=boron.estimate,
+        boron_location=boron.location,
+        boron_sd=spread,
+        boron_log=log,
+        target_mg_kg=target,
+        ceiling_mg_kg=ceiling,
+        mass_need=mass,
+        mass_ceiling=kg_ha_per_mg_kg(soil.density_g_cm3, top, stones_pct=stones),
+        rate_cap_kg_ha=np.maximum(most - used, 0.0),
+        hot=np.zeros(grid.n_cells, dtype=bool),
+    )
+    return _with_hot(bare, samples, grid, settings)
+
+
+def _own_sd(boron: Surface, spread: Floats) -> Floats:
+    if boron.transform != "log":
+        return spread
+    return np.asarray(boron.estimate * np.sqrt(np.expm1(spread**2)))
+
+
+def _with_target_spread(
+    boron: Surface,
+    surfaces: Mapping[str, Surface],
+    crop: Crop,
+    settings: RunSettings,
+    soil: Soil,
+    target: Floats,
+) -> Floats:
+    """Decision SD of boron with the doubt of the target (through clay) added, fitted scale."""
+    clay = surfaces.get("clay")
+    if clay is None or clay.constant:
+        return boron.decision_sd
+    above, _ = target_for(crop, settings, soil.clay_pct + clay.decision_sd)
+    of_target = np.abs(above - target)
+    if boron.transform == "log":
+        of_target = of_target / np.maximum(boron.estimate, 1e-6)
+    return np.asarray(np.hypot(boron.decision_sd, of_target))
+
+
+def _credits(
+    samples: SampleSet, grid: CellGrid, settings: RunSettings, soil: Soil
+) -> tuple[Floats, Floats]:
+    """Boron that lowers the need, and boron that counts against the caps, kg/ha each.
+
+    Given after sampling it lowers the need; given before, the test has seen it, and it only takes
+    room under the caps, declining straight to nothing over its residual time. This season's always
+    counts in full.
+    """
+    crop = settings.crop
+    credit = np.full(grid.n_cells, crop.manure_boron_kg_ha)
+    credit += crop.water_boron_mg_l * crop.irrigation_mm * G_PER_HA_FROM_MM / 1000.0
+    used = np.zeros(grid.n_cells)
+    for one in crop.applied:
+        given = _spread(one, grid)
+        sampled = samples.campaign.sampled_on
+        after = one.on is not None and sampled is not None and one.on > sampled
+        if after:
+            credit += given
+        used += given if one.this_season else given * _share_left(one, sampled, soil)
+    return credit, used
+
+
+def _spread(one: AppliedBoron, grid: CellGrid) -> Floats:
+    if not one.areas:
+        return np.full(grid.n_cells, one.kg_ha)
+    given = np.zeros(grid.n_cells)
+    for area, rate in one.areas:
+        shapely.prepare(area)
+        inside = shapely.contains_xy(area, grid.centres_m[:, 0], grid.centres_m[:, 1])
+        given[inside] = np.maximum(given[inside], rate)
+    return given
+
+
+def _share_left(one: AppliedBoron, sampled: date | None, soil: Soil) -> Floats:
+    years = np.where(
+        soil.clay_pct < 10,
+        limit("residual-sand"),
+        np.where(soil.clay_pct <= 35, limit("residual-loam"), limit("residual-clay")),
+    )
+    if one.on is None or sampled is None:
+        return np.ones(len(years))  # no dates: counted in full, the careful side
+    passed = max((sampled - one.on).days, 0) / 365.25
+    return np.asarray(np.clip(1.0 - passed / years, 0.0, 1.0))
+
+
+def _with_hot(
+    need: CellNeed, samples: SampleSet, grid: CellGrid, settings: RunSettings
+) -> CellNeed:
+    from dataclasses import replace
+
+    likely = chance_over_ceiling(need, 0.0) >= limit("hot-chance")
+    return replace(need, hot=likely | _near_hot_samples(need, samples, grid, settings))
+
+
+def _near_hot_samples(
+    need: CellNeed, samples: SampleSet, grid: CellGrid, settings: RunSettings
+) -> Flags:
+    """Cells within half a working width of a sample at or above its ceiling."""
+    boron = samples.properties["boron"]
+    cells = _cells_near(samples, grid)
+    values = np.where(boron.known, boron.values, -np.inf)
+    high = (values >= need.ceiling_mg_kg[cells]) & ~boron.below_limit
+    struck = np.isin(np.array(samples.ids, dtype=object), list(settings.crop.confirmed_high))
+    hot = np.zeros(grid.n_cells, dtype=bool)
+    reach = max(settings.machine.working_width_m / 2.0, grid.cell_m)
+    for place in np.flatnonzero(high & ~struck):
+        area = samples.areas[place]
+        if area is not None:
+            hot |= shapely.contains_xy(area, grid.centres_m[:, 0], grid.centres_m[:, 1])
+            continue
+        gap = np.hypot(*(grid.centres_m - samples.east_north_m[place]).T)
+        hot |= gap <= max(reach, float(gap.min()))
+    return hot
+
+
+def _cells_near(samples: SampleSet, grid: CellGrid) -> np.ndarray:
+    from scipy.spatial import cKDTree
+
+    return np.asarray(cKDTree(grid.centres_m).query(samples.east_north_m)[1])
+
+
+def _need_at_samples(samples: SampleSet, grid: CellGrid, need: CellNeed) -> Floats:
+    """Need at the samples themselves, from their own boron and their cell's target."""
+    boron = samples.properties["boron"]
+    cells = _cells_near(samples, grid)
+    return np.asarray((need.target_mg_kg[cells] - boron.values) * need.mass_need[cells])
+
+
+def _status_notes(sources: list[Mapping[str, str]]) -> list[Finding]:
+    notes = []
+    for row in sources:
+        if row["status"] in ("MEMORY", "PROPOSAL", "COMMON_PRACTICE_NO_SOURCE"):
+            said = row["status"].replace("_", " ").lower()
+            what = f"{row['row']}: {row['value']} {row['unit']} is {said}"
+            notes.append(finding("RATE-STATUS", where=f"table {row['table']}", what=what))
+    return notes
