@@ -45,3 +45,4 @@ class SampleHints:
     zone_column: str | None = None
     strike_out: tuple[str, ...] = ()  # sample names to leave out
     average_duplicates: bool = False
+    confirmed: tuple[str, ...] = ()  # samples whose odd values were repeated

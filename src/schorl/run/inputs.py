@@ -125,6 +125,7 @@ def hints_of(job: Job, folder: Path) -> SampleHints:
         lab_relative_sd=relative_sd,
         zone_layer=folder / part.zone_layer if part.zone_layer else None,
         strike_out=tuple(part.strike_out),
+        confirmed=tuple(job.crop.confirmed_high),
         **plain,
     )
 
@@ -145,7 +146,9 @@ def read_sample_set(job: Job, folder: Path, field: Field, notes: Notebook) -> Sa
         samples = notes.take(read_samples(path, field=field, hints=hints))
     if samples is None:
         raise Refusal(notes.findings)
-    notes.findings.extend(check_samples(samples, field))
+    notes.findings.extend(
+        check_samples(samples, field, confirmed=tuple(job.crop.confirmed_high))
+    )
     return samples
 
 

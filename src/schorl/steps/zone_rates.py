@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -63,7 +64,7 @@ def chance_limit_kg_ha(cells: CellNeed, *, unevenness: float) -> float:
     )
 
 
-def _bisect(still_up) -> float:  # type: ignore[no-untyped-def]
+def _bisect(still_up: Callable[[float], bool]) -> float:
     """Largest rate at which a predicate that turns false once still holds, from 0."""
     if not still_up(0.0):
         return 0.0
@@ -151,7 +152,7 @@ def cell_rates_kg_ha(need: CellNeed, settings: RunSettings) -> Floats:
     return machine_rate(rate, settings.product, settings.machine)
 
 
-def _bisect_cells(still_up, count: int) -> Floats:  # type: ignore[no-untyped-def]
+def _bisect_cells(still_up: Callable[[Floats], Flags], count: int) -> Floats:
     low, high = np.zeros(count), np.full(count, 2.0 * ABSOLUTE_PASS_KG_HA)
     start = still_up(low)
     for _ in range(24):
