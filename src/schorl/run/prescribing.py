@@ -81,9 +81,9 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
         samples,
         mapped.surfaces,
         assessed.need,
-        assessed.sample_need_kg_ha,
-        outcome,
-        settings,
+        sample_need_kg_ha=assessed.sample_need_kg_ha,
+        outcome=outcome,
+        settings=settings,
         seed=settings.seed,
         progress=progress,
     )

@@ -1,0 +1,99 @@
+"""The sentence that says why there are so many zones, or one flat rate."""
+
+from __future__ import annotations
+
+from schorl.zoning.zone_count import GATE_SAVING
+
+#: Below this number of samples a missing pattern is no evidence of a uniform field.
+FEW_SAMPLES = 40
+WORDS = ("no", "one", "two", "three", "four", "five", "six", "seven", "eight", "nine", "ten")
+
+
+def number_word(count: int) -> str:
+    """A number as a word up to ten."""
+    return WORDS[count] if 0 <= count < len(WORDS) else str(count)
+
+
+def percent(share: float) -> str:
+    """A share in whole percent."""
+    return f"{100.0 * share:.0f} %"
+
+
+def between(low: float, high: float) -> str:
+    """A range of savings; below nothing it says so."""
+    if low < 0:
+        return f"between a loss of {percent(-low)} and a saving of {percent(high)}"
+    return f"between {percent(low)} and {percent(high)}"
+
+
+def flat_reason(
+    *, p: float | None, best: float, samples: int, test: str, gate_p: float = 0.10
+) -> str:
+    """Why one flat rate: no pattern in the need, or nothing gained by zones."""
+    if p is not None and p > gate_p:
+        sentence = (
+            f"One flat rate: the boron need at the {samples} samples shows no {test} that chance "
+            f"would not show as well (p = {p:.2f})."
+        )
+        if samples < FEW_SAMPLES:
+            sentence += (
+                f" {samples} samples are few: this is no evidence that the field is uniform, only "
+                "that zones cannot be told from them."
+            )
+        return sentence
+    return (
+        f"One flat rate: after all limits and machine steps the best zones would save "
+        f"{percent(max(best, 0.0))} of the expected loss; below {percent(GATE_SAVING)} zones are "
+        "not worth their risk."
+    )
+
+
+def cluster_reason(
+    count: int,
+    *,
+    p: float,
+    saving: float,
+    low: float,
+    high: float,
+    classes: int | None,
+) -> str:
+    """Why so many zones: classes in the samples, or slices of a gradient that save enough."""
+    kind = (
+        f"the samples fall into {number_word(count)} discrete classes"
+        if classes == count
+        else "the soil changes gradually, and the zones are slices of a gradient"
+    )
+    return (
+        f"{number_word(count).capitalize()} zones: the boron need is patterned (p = {p:.3f}), "
+        f"zones save {percent(saving)} of the loss of one flat rate ({between(low, high)}), "
+        f"and {kind}."
+    )
+
+
+def own_count_reason(count: int, *, p: float | None, saving: float, low: float, high: float) -> str:
+    """The advisor's own number, with what speaks for it."""
+    if count == 1:
+        return "One flat rate, as asked for."
+    shown = "" if p is None else f"; pattern of the need: p = {p:.3f}"
+    return (
+        f"{number_word(count).capitalize()} zones, as asked for: expected saving against one flat "
+        f"rate {percent(saving)} ({between(low, high)}){shown}."
+    )
+
+
+def sampled_reason(count: int, *, p: float, saving: float) -> str:
+    """Sample zones are the management zones."""
+    return (
+        f"{number_word(count).capitalize()} zones as they were sampled: their needs differ by more "
+        f"than laboratory and sampling error explain (p = {p:.3f}), and a rate each saves "
+        f"{percent(saving)} of the loss of one flat rate."
+    )
+
+
+def given_reason(count: int, origin: str, *, saving: float) -> str:
+    """Zones that came from outside: an earlier pack or the advisor's layer."""
+    whose = "kept from the earlier pack" if origin == "kept" else "of the advisor's own layer"
+    return (
+        f"{number_word(count).capitalize()} zones {whose}, with new rates: expected saving against "
+        f"one flat rate {percent(saving)}."
+    )
