@@ -51,7 +51,9 @@ def read_features(path: Path, *, layer: str | None, crs: str | None, option: str
         return _zipped_shapefile(path, data, layer=layer, crs=crs, option=option)
     if suffix not in DRIVERS:
         known = ", ".join(sorted([*DRIVERS, ".zip"]))
-        raise refuse("IN-KIND", path, f"`{suffix or path.name}` is not a kind that is read: {known}")
+        raise refuse(
+            "IN-KIND", path, f"`{suffix or path.name}` is not a kind that is read: {known}"
+        )
     _check_content(path, suffix, data)
     return _opened(path, DRIVERS[suffix], path, layer=layer, crs=crs, option=option)
 

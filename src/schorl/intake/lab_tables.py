@@ -1,0 +1,169 @@
+"""Laboratory tables as rows of text, whatever the file: delimiter, encoding, preamble."""
+
+from __future__ import annotations
+
+import csv
+import io
+from dataclasses import dataclass
+from pathlib import Path
+
+from schorl.intake.guards import Unreadable, checked_bytes, refuse, refuse_xml_tricks, unpacked
+from schorl.intake.headers import recognise
+from schorl.intake.quantities import unit_named
+
+TABLE_SUFFIXES = {".csv", ".txt", ".tsv", ".xlsx"}
+MOST_ROWS = 60_000
+
+
+@dataclass(frozen=True, kw_only=True)
+class Table:
+    """A table with its header; ``lines`` says where each row stands in the file."""
+
+    source: str
+    headers: tuple[str, ...]
+    units: tuple[str, ...]  # a unit row's cells, or empty strings
+    rows: tuple[tuple[str, ...], ...]
+    lines: tuple[int, ...]
+    decimal_comma: bool
+    how: str
+
+
+def read_table(path: Path, *, layer: str | None) -> Table:
+    """Read a CSV or XLSX file.
+
+    Raises
+    ------
+    Unreadable
+        With the finding: encoding, several sheets, no header that is understood, too many rows.
+    """
+    data = checked_bytes(path)
+    if path.suffix.lower() == ".xlsx":
+        raw, how, comma = _sheet(path, data, layer), "spreadsheet", True
+    else:
+        text, encoding = _decoded(path, data)
+        delimiter = _delimiter(text)
+        raw = list(csv.reader(io.StringIO(text, newline=""), delimiter=delimiter))
+        comma = _decimal_comma(raw, delimiter)
+        named = {",": "comma", ";": "semicolon", "\t": "tab"}[delimiter]
+        how = f"{encoding}, {named}, decimal {'comma' if comma else 'point'}"
+    if len(raw) > MOST_ROWS:
+        raise refuse("IN-ROWS", path, f"{len(raw)} rows; at most {MOST_ROWS} are read")
+    return _with_header(path, raw, comma, how)
+
+
+def _decoded(path: Path, data: bytes) -> tuple[str, str]:
+    marks = [(b"\xef\xbb\xbf", "utf-8-sig"), (b"\xff\xfe", "utf-16"), (b"\xfe\xff", "utf-16")]
+    for mark, encoding in marks:
+        if data.startswith(mark):
+            try:
+                return data.decode(encoding), encoding
+            except UnicodeDecodeError as reason:
+                raise refuse("IN-ENCODING", path, f"not {encoding}: {reason}") from None
+    try:
+        text = data.decode("utf-8")
+        if "\0" not in text:
+            return text, "utf-8"
+    except UnicodeDecodeError:
+        pass
+    if b"\0" in data:
+        raise refuse("IN-ENCODING", path, "binary content where text is expected")
+    return data.decode("cp1252", errors="replace"), "latin-1"
+
+
+def _delimiter(text: str) -> str:
+    lines = [line for line in text.splitlines() if line.strip()][:40]
+    score = {}
+    for mark in (";", "\t", ","):
+        counts = [len(next(csv.reader([line], delimiter=mark))) for line in lines]
+        widest = max(counts, default=0)
+        score[mark] = (sum(count == widest for count in counts) if widest > 1 else 0, widest)
+    return max(score, key=lambda mark: (score[mark][0] * min(score[mark][1], 3), mark != ","))
+
+
+def _decimal_comma(raw: list[list[str]], delimiter: str) -> bool:
+    if delimiter == ",":
+        quoted = [cell for row in raw for cell in row if _looks_decimal(cell, ",")]
+        return len(quoted) > 0 and not any(_looks_decimal(c, ".") for row in raw for c in row)
+    return any(_looks_decimal(cell, ",") for row in raw for cell in row)
+
+
+def _looks_decimal(cell: str, mark: str) -> bool:
+    text = cell.strip().lstrip("<≤=+- ").strip()
+    head, found, tail = text.partition(mark)
+    return bool(found) and head.isdigit() and tail.isdigit()
+
+
+def _sheet(path: Path, data: bytes, layer: str | None) -> list[list[str]]:
+    from python_calamine import CalamineWorkbook
+
+    for name, member in unpacked(path, data).items():
+        if name.lower().endswith((".xml", ".rels")):
+            refuse_xml_tricks(path, member)
+        if name.lower().endswith((".zip", ".xlsx")):
+            raise refuse("IN-ARCHIVE", path, f"an archive within the spreadsheet: {name}")
+    try:
+        book = CalamineWorkbook.from_filelike(io.BytesIO(data))
+        names = list(book.sheet_names)
+        full = [name for name in names if book.get_sheet_by_name(name).to_python()]
+        chosen = layer if layer is not None else (full[0] if len(full) == 1 else None)
+        if chosen is None or chosen not in names:
+            raise refuse(
+                "IN-LAYERS",
+                path,
+                f"{len(full)} sheets with content: {', '.join(names)}",
+                "name one with `--samples-layer`",
+            )
+        return [
+            [_cell_text(cell) for cell in row] for row in book.get_sheet_by_name(chosen).to_python()
+        ]
+    except Unreadable:
+        raise
+    except Exception as reason:  # the reader's many kinds of failure all mean: not readable
+        raise refuse("IN-BROKEN", path, f"not a readable spreadsheet: {reason}") from None
+
+
+def _cell_text(cell: object) -> str:
+    if isinstance(cell, bool):
+        return str(cell)
+    if isinstance(cell, float):
+        return repr(int(cell)) if cell.is_integer() else repr(cell)
+    return "" if cell is None else str(cell)
+
+
+def _with_header(path: Path, raw: list[list[str]], comma: bool, how: str) -> Table:
+    best, place = 0, -1
+    for line, row in enumerate(raw[:60]):
+        understood = len({one.what for one in recognise(row)})
+        if understood > best:
+            best, place = understood, line
+    if best < 2:
+        first = next((row for row in raw if any(cell.strip() for cell in row)), [])
+        shown = ", ".join(f"`{cell.strip()}`" for cell in first[:8] if cell.strip())
+        raise refuse("IN-HEADER", path, f"no row of column names is understood; it begins {shown}")
+    headers = [cell.strip() for cell in raw[place]]
+    body = list(enumerate(raw[place + 1 :], start=place + 2))
+    units = [""] * len(headers)
+    if body and _is_unit_row(body[0][1]):
+        units = _fitted(body[0][1], len(headers))
+        body = body[1:]
+    kept = [(line, row) for line, row in body if any(cell.strip() for cell in row)]
+    return Table(
+        source=path.name,
+        headers=tuple(headers),
+        units=tuple(units),
+        rows=tuple(tuple(_fitted(row, len(headers))) for _, row in kept),
+        lines=tuple(line for line, _ in kept),
+        decimal_comma=comma,
+        how=how,
+    )
+
+
+def _is_unit_row(row: list[str]) -> bool:
+    cells = [cell.strip() for cell in row if cell.strip()]
+    named = [cell for cell in cells if unit_named(cell)]
+    numbers = [cell for cell in cells if cell.replace(".", "").replace(",", "").isdigit()]
+    return len(named) >= 1 and not numbers and len(named) >= len(cells) / 3
+
+
+def _fitted(row: list[str] | tuple[str, ...], width: int) -> list[str]:
+    return [cell.strip() for cell in (*row, *[""] * width)][:width]
