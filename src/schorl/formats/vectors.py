@@ -10,6 +10,7 @@ from collections.abc import Iterable
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import shapely
 
 from schorl.errors import OutputProblem
@@ -163,7 +164,7 @@ def _sample_rows(record: RunRecord) -> list[dict[str, object]]:
         }
         for prop, one in samples.properties.items():
             value = one.values[place]
-            row[prop] = None if value != value else float(value)
+            row[prop] = float(value) if np.isfinite(value) else None
             row[f"{prop}_below_limit"] = bool(one.below_limit[place])
         rows.append(row)
     return rows

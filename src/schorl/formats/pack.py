@@ -1,0 +1,321 @@
+"""The pack: everything a run leaves, whole or absent.
+
+Written into a hidden folder beside the target, read back by other readers, synced, and only then
+renamed. With ``replace`` the old pack is renamed aside first; whatever moment a run is killed at,
+the next command finds either name and completes or undoes the swap.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import os
+import shutil
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from schorl.errors import OutputProblem, Refusal, SchorlError, UsageProblem
+from schorl.findings import finding
+from schorl.formats.writing import safe_name, sync_folder, write_synced
+from schorl.geodesy import WGS84
+from schorl.model.record import RunRecord
+from schorl.model.summary import SCHEMA, summary
+
+__all__ = ["PackContents", "PackWritten", "complete_swaps", "read_pack", "safe_name", "write_pack"]
+
+ASIDE, BESIDE, LOCK = ".old-pack", ".new-pack", ".lock"
+
+
+@dataclass(frozen=True, kw_only=True)
+class PackWritten:
+    """Where a pack went, and its files: path, bytes, sha256."""
+
+    folder: Path
+    files: tuple[tuple[str, int, str], ...]
+
+
+@dataclass(frozen=True, kw_only=True)
+class PackZone:
+    """A zone as a pack holds it, in longitude and latitude."""
+
+    number: int
+    kind: str
+    geometry: Any
+    area_ha: float
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class PackContents:
+    """What later steps need of an earlier pack."""
+
+    folder: Path
+    summary: dict[str, Any]
+    manifest: dict[str, Any]
+    crs: str  # of zone geometries
+    zones: tuple[PackZone, ...]
+    boron_kg_ha: tuple[float, ...]
+
+
+def prescription_files(record: RunRecord) -> tuple[str, ...]:
+    """Files for the controller, in the order a contractor looks for them."""
+    return (
+        "prescription.geojson", "shapefile/BORON01.shp", "shapefile/BORON01.zip",
+        "TASKDATA/TASKDATA.XML", "prescription.gpkg", "surfaces/rate.tif",
+    )  # fmt: skip
+
+
+def write_pack(
+    record: RunRecord,
+    folder: Path,
+    *,
+    extras: Mapping[str, bytes],
+    replace: bool,
+    profile: Mapping[str, object] | None = None,
+) -> PackWritten:
+    """Write a whole pack into ``folder``.
+
+    Raises
+    ------
+    UsageProblem
+        There is a pack already and ``replace`` is not set (exit 2).
+    OutputProblem
+        Writing failed, or a file reads back differently (exit 5); nothing is left behind.
+    """
+    complete_swaps(folder)
+    if folder.exists() and not replace:
+        what = "there is a pack already; nothing was written"
+        raise UsageProblem([finding("OUT-THERE", where=str(folder), what=what)])
+    try:
+        folder.parent.mkdir(parents=True, exist_ok=True)
+        with _Lock(folder):
+            return _write_beside(record, folder, extras)
+    except OSError as reason:
+        what = f"cannot be written: {reason.strerror or reason}"
+        raise OutputProblem([finding("OUT-WRITE", where=str(folder), what=what)]) from None
+
+
+class _Lock:
+    """Only one run writes a pack at a time; a dead run's lock does not hold."""
+
+    def __init__(self, folder: Path) -> None:
+        self.path = folder.with_name(f".{folder.name}{LOCK}")
+
+    def __enter__(self) -> None:
+        for _ in range(2):
+            try:
+                write_synced(self.path, str(os.getpid()).encode())
+                return
+            except FileExistsError:
+                if _alive(self.path):
+                    what = "another run is writing this pack"
+                    raise OutputProblem(
+                        [finding("OUT-BUSY", where=str(self.path), what=what)]
+                    ) from None
+                self.path.unlink(missing_ok=True)
+        raise OutputProblem(
+            [finding("OUT-BUSY", where=str(self.path), what="the lock stays taken")]
+        )
+
+    def __exit__(self, *_: object) -> None:
+        self.path.unlink(missing_ok=True)
+
+
+def _alive(lock: Path) -> bool:
+    try:
+        number = int(lock.read_text(encoding="ascii") or "0")
+        os.kill(number, 0)
+    except (ValueError, ProcessLookupError, FileNotFoundError):
+        return False
+    except OSError:  # not ours to signal: it lives
+        return True
+    return number > 0
+
+
+def _write_beside(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -> PackWritten:
+    beside = folder.with_name(f".{folder.name}{BESIDE}")
+    shutil.rmtree(beside, ignore_errors=True)
+    beside.mkdir(mode=0o700)
+    try:
+        _write_files(record, beside, extras)
+        files = _listed(beside)
+        _write_json(beside / "manifest.json", _manifest(record, files))
+        _read_back(beside)
+        _sync_all(beside)
+        beside.chmod(0o755)
+        _move_in(beside, folder)
+    except BaseException:
+        shutil.rmtree(beside, ignore_errors=True)
+        raise
+    manifest = folder / "manifest.json"
+    row = ("manifest.json", manifest.stat().st_size, _sha256(manifest.read_bytes()))
+    return PackWritten(folder=folder, files=(*files, row))
+
+
+def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -> None:
+    from schorl.formats.note import note_bytes
+    from schorl.formats.rasters import write_surfaces
+    from schorl.formats.shapes import TASK_DECIMALS, zone_shapes
+    from schorl.formats.taskdata import taskdata_bytes
+    from schorl.formats.vectors import geojson_bytes, write_geopackage, write_shapefile
+
+    shapes = zone_shapes(record)
+    for name in ("shapefile", "TASKDATA", "surfaces"):
+        (folder / name).mkdir()
+    (folder / "prescription.geojson").write_bytes(geojson_bytes(record, shapes))
+    write_shapefile(folder / "shapefile", shapes)
+    note = note_bytes(record)
+    (folder / "shapefile" / "READ_ME.txt").write_bytes(note)
+    (folder / "READ_ME.txt").write_bytes(note)
+    write_geopackage(folder / "prescription.gpkg", record, shapes)
+    task_shapes = zone_shapes(record, decimals=TASK_DECIMALS)
+    (folder / "TASKDATA" / "TASKDATA.XML").write_bytes(taskdata_bytes(record, task_shapes))
+    write_surfaces(folder / "surfaces", record)
+    for name, data in extras.items():
+        (folder / name).write_bytes(data)
+    _write_json(folder / "summary.json", summary(record))
+
+
+def _write_json(path: Path, document: Mapping[str, Any]) -> None:
+    text = json.dumps(document, indent=1, sort_keys=True, allow_nan=False, ensure_ascii=False)
+    path.write_bytes((text + "\n").encode("utf-8"))
+
+
+def _manifest(record: RunRecord, files: Sequence[tuple[str, int, str]]) -> dict[str, Any]:
+    settings = record.settings
+    return {
+        "schema": SCHEMA,
+        "files": [{"path": path, "bytes": size, "sha256": sha} for path, size, sha in files],
+        "inputs_sha256": dict(record.inputs_sha256),
+        "versions": dict(record.versions),
+        "seed": settings.seed,
+        "made_on": settings.made_on.isoformat() if settings.made_on else None,
+        "settings": _plain(settings),
+    }
+
+
+def _plain(value: Any) -> Any:
+    """Settings as JSON; geometries by their checksum."""
+    if hasattr(value, "wkb"):
+        return f"geometry {_sha256(value.wkb)[:16]}"
+    if hasattr(value, "__dataclass_fields__"):
+        return {name: _plain(getattr(value, name)) for name in value.__dataclass_fields__}
+    if isinstance(value, Mapping):
+        return {str(key): _plain(item) for key, item in value.items()}
+    if isinstance(value, tuple | list):
+        return [_plain(item) for item in value]
+    if hasattr(value, "isoformat"):
+        return value.isoformat()
+    return value if isinstance(value, str | int | float | bool | None) else str(value)
+
+
+def _listed(folder: Path) -> tuple[tuple[str, int, str], ...]:
+    paths = sorted(one for one in folder.rglob("*") if one.is_file())
+    rows = []
+    for path in paths:
+        path.chmod(0o644)
+        data = path.read_bytes()
+        rows.append((path.relative_to(folder).as_posix(), len(data), _sha256(data)))
+    return tuple(rows)
+
+
+def _sha256(data: bytes) -> str:
+    return hashlib.sha256(data).hexdigest()
+
+
+def _read_back(folder: Path) -> None:
+    from schorl.formats.verify import verify
+
+    seen = verify(folder)
+    if not seen.whole:
+        raise OutputProblem(
+            [
+                finding("OUT-READ-BACK", where=fault.file, what=f"{fault.place}: {fault.what}")
+                for fault in seen.faults
+            ]
+        )
+
+
+def _sync_all(folder: Path) -> None:
+    for path in sorted(folder.rglob("*")):
+        if path.is_file():
+            with path.open("rb+") as stream:
+                os.fsync(stream.fileno())
+    for path in [*[one for one in folder.rglob("*") if one.is_dir()], folder]:
+        sync_folder(path)
+
+
+def _move_in(beside: Path, folder: Path) -> None:
+    aside = folder.with_name(f".{folder.name}{ASIDE}")
+    if folder.exists():
+        folder.rename(aside)
+        try:
+            beside.rename(folder)
+        except BaseException:
+            aside.rename(folder)
+            raise
+    else:
+        beside.rename(folder)
+    sync_folder(folder.parent)
+    shutil.rmtree(aside, ignore_errors=True)
+
+
+def complete_swaps(folder: Path) -> None:
+    """Finish or undo a swap that a killed run left: afterwards the old or new pack stands whole."""
+    aside = folder.with_name(f".{folder.name}{ASIDE}")
+    if not folder.name or not aside.is_dir():
+        return
+    if _busy(folder):
+        return
+    if folder.exists():
+        shutil.rmtree(aside, ignore_errors=True)
+    else:
+        aside.rename(folder)
+
+
+def _busy(folder: Path) -> bool:
+    lock = folder.with_name(f".{folder.name}{LOCK}")
+    return lock.exists() and _alive(lock)
+
+
+def read_pack(folder: Path) -> PackContents:
+    """An earlier pack's record and zones.
+
+    Raises
+    ------
+    Refusal
+        Not a pack (exit 3).
+    """
+    import fiona
+    import shapely
+
+    complete_swaps(folder)
+    try:
+        record = json.loads((folder / "summary.json").read_text(encoding="utf-8"))
+        manifest = json.loads((folder / "manifest.json").read_text(encoding="utf-8"))
+        with fiona.open(folder / "prescription.gpkg", layer="zones") as layer:
+            shapes = {
+                int(row.properties["zone"]): shapely.geometry.shape(row.geometry) for row in layer
+            }
+        rows = record["zones"]
+        zones = tuple(
+            PackZone(
+                number=row["zone"], kind=row["kind"], geometry=shapes[row["zone"]],
+                area_ha=row["area_ha"],
+            )
+            for row in rows
+        )  # fmt: skip
+    except SchorlError:
+        raise
+    except Exception as reason:  # a folder that is not a pack fails in many ways
+        what = f"not a pack that can be read: {type(reason).__name__}: {reason}"
+        raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)]) from None
+    return PackContents(
+        folder=folder,
+        summary=record,
+        manifest=manifest,
+        crs=WGS84,
+        zones=zones,
+        boron_kg_ha=tuple(float(row["boron_kg_ha"]) for row in rows),
+    )

@@ -1,0 +1,320 @@
+"""Reading prescription files back, each by another route than it was written by."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+from xml.etree import ElementTree
+
+import shapely
+from shapely.geometry import Polygon
+
+from schorl.formats.taskdata import MASS_COUNTS, MASS_DDI, VOLUME_COUNTS, VOLUME_DDI
+
+RATE_STEP = {"geojson": 1e-6, "gpkg": 1e-6, "shapefile": 0.005, "taskdata": 0.005}
+
+
+@dataclass(frozen=True, kw_only=True)
+class Fault:
+    """One thing that is wrong with a file."""
+
+    file: str
+    place: str
+    what: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class FileZone:
+    """A zone as a file has it: one polygon or several, its number, its product rate."""
+
+    number: int | None
+    geometry: Any
+    rate: float | None
+
+
+@dataclass(frozen=True, kw_only=True)
+class FileZones:
+    """All zones of a file, and faults met while reading."""
+
+    kind: str
+    zones: tuple[FileZone, ...]
+    faults: tuple[Fault, ...] = ()
+    boundary: Any = None
+
+
+def read_zones(path: Path) -> FileZones:
+    """Zones of a GeoJSON, shapefile, GeoPackage or TASKDATA.XML.
+
+    What cannot be read at all comes back as a fault, never as an exception.
+    """
+    readers = {
+        ".geojson": _geojson, ".json": _geojson, ".shp": _shapefile, ".gpkg": _geopackage,
+        ".xml": _taskdata,
+    }  # fmt: skip
+    reader = readers.get(path.suffix.lower())
+    if reader is None:
+        return _unread(path, f"`{path.suffix}` is not a kind of prescription file")
+    try:
+        return reader(path)
+    except Exception as reason:  # whatever a broken file does to a reader is a fault of the file
+        return _unread(path, f"cannot be read: {type(reason).__name__}: {reason}")
+
+
+def _unread(path: Path, what: str) -> FileZones:
+    fault = Fault(file=path.name, place="file", what=what)
+    return FileZones(kind="", zones=(), faults=(fault,))
+
+
+def _geojson(path: Path) -> FileZones:
+    import pyogrio
+
+    faults = []
+    document = json.loads(path.read_text(encoding="utf-8"))
+    if "crs" in document:
+        faults.append(Fault(file=path.name, place="top", what="a `crs` member is not RFC 7946"))
+    meta, _, wkb, columns = pyogrio.raw.read(path)
+    table = dict(zip(meta["fields"], columns, strict=True))
+    missing = {"zone", "product_rate"} - set(table)
+    if missing:
+        what = f"columns missing: {', '.join(sorted(missing))}"
+        return FileZones(
+            kind="geojson", zones=(), faults=(Fault(file=path.name, place="top", what=what),)
+        )
+    zones = _rows(table["zone"], shapely.from_wkb(wkb), table["product_rate"])
+    faults += _ring_faults(path, document)
+    return FileZones(kind="geojson", zones=zones, faults=tuple(faults))
+
+
+def _ring_faults(path: Path, document: dict[str, Any]) -> list[Fault]:
+    """Rings that turn the wrong way (RFC 7946, 3.1.6)."""
+    faults = []
+    for place, feature in enumerate(document.get("features", []), start=1):
+        geometry = feature.get("geometry") or {}
+        polygons = geometry.get("coordinates", [])
+        if geometry.get("type") == "Polygon":
+            polygons = [polygons]
+        for rings in polygons:
+            for index, ring in enumerate(rings):
+                if len(ring) < 4 or ring[0] != ring[-1]:
+                    faults.append(_fault(path, place, "a ring is not closed"))
+                elif shapely.is_ccw(shapely.linearrings(ring)) != (index == 0):
+                    faults.append(_fault(path, place, "a ring turns the wrong way"))
+    return faults
+
+
+def _fault(path: Path, place: int, what: str) -> Fault:
+    return Fault(file=path.name, place=f"feature {place}", what=what)
+
+
+def _rows(numbers: Any, geometries: Any, rates: Any) -> tuple[FileZone, ...]:
+    return tuple(
+        FileZone(number=_whole(number), geometry=geometry, rate=_real(rate))
+        for number, geometry, rate in zip(numbers, geometries, rates, strict=True)
+    )
+
+
+def _whole(value: Any) -> int | None:
+    try:
+        return int(value)
+    except (TypeError, ValueError):
+        return None
+
+
+def _real(value: Any) -> float | None:
+    try:
+        return float(value)
+    except (TypeError, ValueError):
+        return None
+
+
+def _shapefile(path: Path) -> FileZones:
+    import pyogrio
+
+    faults = [
+        Fault(file=path.with_suffix(suffix).name, place="file", what="is missing")
+        for suffix in (".shx", ".dbf", ".prj", ".cpg")
+        if not path.with_suffix(suffix).exists()
+    ]
+    if any(fault.file.endswith((".shx", ".dbf")) for fault in faults):
+        return FileZones(kind="shapefile", zones=(), faults=tuple(faults))
+    faults += _lengths(path)
+    meta, _, wkb, columns = pyogrio.raw.read(path)
+    table = dict(zip(meta["fields"], columns, strict=True))
+    if {"RATE", "ZONE"} - set(table):
+        faults.append(Fault(file=path.name, place="table", what="no columns RATE and ZONE"))
+        return FileZones(kind="shapefile", zones=(), faults=tuple(faults))
+    zones = _rows(table["ZONE"], shapely.from_wkb(wkb), table["RATE"])
+    return FileZones(kind="shapefile", zones=zones, faults=tuple(faults))
+
+
+def _lengths(path: Path) -> list[Fault]:
+    """Header lengths against real ones: a half-written or appended set reads as a whole one."""
+    faults = []
+    counts = {}
+    for suffix in (".shp", ".shx"):
+        data = path.with_suffix(suffix).read_bytes()
+        said = 2 * int.from_bytes(data[24:28], "big")
+        if said != len(data):
+            what = f"its header says {said} bytes, it has {len(data)}"
+            faults.append(Fault(file=path.with_suffix(suffix).name, place="header", what=what))
+        if suffix == ".shx":
+            counts[".shx"] = (len(data) - 100) // 8
+        if int.from_bytes(data[32:36], "little") != 5:
+            faults.append(Fault(file=path.name, place="header", what="not of polygon type"))
+    table = path.with_suffix(".dbf").read_bytes()
+    rows = int.from_bytes(table[4:8], "little")
+    header, width = int.from_bytes(table[8:10], "little"), int.from_bytes(table[10:12], "little")
+    held = (len(table) - header) // max(width, 1)
+    if not rows == held == counts[".shx"]:
+        what = f"{rows} rows said, {held} held, {counts['.shx']} shapes"
+        faults.append(Fault(file=path.with_suffix(".dbf").name, place="header", what=what))
+    return faults
+
+
+def _geopackage(path: Path) -> FileZones:
+    import fiona
+
+    faults = _database_faults(path)
+    with fiona.open(path, layer="zones") as layer:
+        rows = [(row.properties, shapely.geometry.shape(row.geometry)) for row in layer]
+    with fiona.open(path, layer="boundary") as layer:
+        boundary = shapely.union_all([shapely.geometry.shape(row.geometry) for row in layer])
+    zones = tuple(
+        FileZone(
+            number=_whole(row.get("zone")), geometry=shape, rate=_real(row.get("product_rate"))
+        )
+        for row, shape in rows
+    )
+    return FileZones(kind="gpkg", zones=zones, faults=tuple(faults), boundary=boundary)
+
+
+def _database_faults(path: Path) -> list[Fault]:
+    import sqlite3
+
+    faults = []
+    for side in ("-journal", "-wal"):
+        if path.with_name(path.name + side).exists():
+            faults.append(Fault(file=path.name, place="file", what=f"a {side} file lies beside it"))
+    with sqlite3.connect(f"{path.resolve().as_uri()}?mode=ro", uri=True) as database:
+        if database.execute("pragma integrity_check").fetchone()[0] != "ok":
+            faults.append(Fault(file=path.name, place="database", what="not sound inside"))
+        if database.execute("pragma application_id").fetchone()[0] != 0x47504B47:
+            faults.append(Fault(file=path.name, place="database", what="not marked as GeoPackage"))
+        if database.execute("pragma foreign_key_check").fetchall():
+            faults.append(Fault(file=path.name, place="database", what="dangling references"))
+    database.close()
+    return faults
+
+
+def _taskdata(path: Path) -> FileZones:
+    data = path.read_bytes()
+    if b"<!DOCTYPE" in data.upper() or b"<!ENTITY" in data.upper():
+        raise ValueError("it declares a document type or entities")
+    root = ElementTree.fromstring(data)
+    faults = _task_faults(path, root)
+    tasks = root.findall("TSK")
+    zones: list[FileZone] = []
+    for zone in tasks[0].findall("TZN") if tasks else []:
+        polygons = [_task_polygon(one) for one in zone.findall("PLN")]
+        if not polygons:
+            continue
+        value = zone.find("PDV")
+        said = zone.get("B", "").removeprefix("zone ")
+        zones.append(
+            FileZone(
+                number=_whole(said),
+                geometry=shapely.union_all([one for one in polygons if one is not None]),
+                rate=_task_rate(value),
+            )
+        )
+    return FileZones(kind="taskdata", zones=tuple(zones), faults=tuple(faults))
+
+
+def _task_rate(value: ElementTree.Element | None) -> float | None:
+    if value is None:
+        return None
+    per = {MASS_DDI: MASS_COUNTS, VOLUME_DDI: VOLUME_COUNTS}.get(value.get("A", ""))
+    counts = _whole(value.get("B"))
+    return None if per is None or counts is None else counts / per
+
+
+def _task_polygon(polygon: ElementTree.Element) -> Any:
+    rings = {"1": [], "2": []}  # type: dict[str, list[list[tuple[float, float]]]]
+    for line in polygon.findall("LSG"):
+        points = [(float(one.get("D", "nan")), float(one.get("C", "nan"))) for one in line]
+        rings.setdefault(line.get("A", ""), []).append(points)
+    return Polygon(rings["1"][0], rings["2"]) if rings["1"] else None
+
+
+def _task_faults(path: Path, root: ElementTree.Element) -> list[Fault]:
+    """Rules of the standard that its schema does not hold."""
+    found: list[tuple[str, str]] = []
+    if path.name != "TASKDATA.XML":
+        found.append(("file", "the name must be TASKDATA.XML"))
+    ids = [one.get("A", "") for one in root.iter() if one.tag in ID_TAGS]
+    found += [
+        ("ids", f"`{one}` stands twice") for one in sorted({i for i in ids if ids.count(i) > 1})
+    ]
+    for one in root.iter():
+        for key in ("C", "D", "E", "F", "I"):
+            value = one.get(key, "")
+            if value[:3] in ID_TAGS and value[3:].isdigit() and value not in ids:
+                found.append((one.tag, f"{key} names `{value}`, which is not there"))
+        for key in ("B", "C"):
+            if one.tag in ("CTR", "FRM", "PFD", "PDT", "TSK", "TZN") and len(one.get(key, "")) > 32:
+                found.append((one.tag, f"{key} is longer than 32 characters"))
+    tasks = root.findall("TSK")
+    if len(tasks) != 1:
+        found.append(("TSK", f"{len(tasks)} tasks; one is expected"))
+    for task in tasks:
+        found += _zone_code_faults(task)
+    for line in root.iter("LSG"):
+        points = [(one.get("C"), one.get("D")) for one in line]
+        if len(points) < 4 or points[0] != points[-1]:
+            found.append(("LSG", "a ring is not closed"))
+        found += [
+            ("PNT", f"{c}, {d} is no plain latitude and longitude")
+            for c, d in points
+            if not (_plain_degree(c, 90) and _plain_degree(d, 180))
+        ]
+    return [Fault(file=path.name, place=place, what=what) for place, what in found]
+
+
+ID_TAGS = ("CTR", "FRM", "PFD", "PDT", "VPN", "TSK", "DVC", "GRD")
+
+
+def _plain_degree(text: str | None, most: float) -> bool:
+    if text is None or "e" in text.lower():
+        return False
+    value = _real(text)
+    return value is not None and abs(value) <= most and len(text.partition(".")[2]) <= 9
+
+
+def _zone_code_faults(task: ElementTree.Element) -> list[tuple[str, str]]:
+    found = []
+    codes = [zone.get("A", "") for zone in task.findall("TZN")]
+    found += [
+        ("TZN", f"code {one} stands twice")
+        for one in sorted({c for c in codes if codes.count(c) > 1})
+    ]
+    found += [
+        ("TZN", f"`{one}` is no code from 0 to 254")
+        for one in codes
+        if not one.isdigit() or int(one) > 254
+    ]
+    for key, words in (("H", "default"), ("I", "position lost"), ("J", "out of field")):
+        if task.get(key) not in codes:
+            found.append(("TSK", f"the {words} zone `{task.get(key)}` is not there"))
+    if len(task.findall("GRD")) > 1:
+        found.append(("GRD", "more than one grid in a task"))
+    if task.findall("GRD") and any(zone.findall("PLN") for zone in task.findall("TZN")):
+        found.append(("GRD", "polygons and a grid in one task"))
+    for value in task.iter("PDV"):
+        counts = _whole(value.get("B"))
+        if value.get("A") not in (MASS_DDI, VOLUME_DDI):
+            found.append(("PDV", f"`{value.get('A')}` is not a product rate entry"))
+        if counts is None or not 0 <= counts < 2**31:
+            found.append(("PDV", f"`{value.get('B')}` is not a rate"))
+    return found

@@ -1,0 +1,271 @@
+"""Answer whether a pack or file is whole, valid, inside its field and as its record says."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import math
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import shapely
+
+from schorl.formats.pack import complete_swaps
+from schorl.formats.reading import RATE_STEP, Fault, FileZones, read_zones
+from schorl.geodesy import WGS84, area_ha, field_crs, transform_geometry
+
+GAP_M2, GAP_M2_PER_M = 0.1, 0.02  # cover after rounding: 0.1 m² and 2 cm along the edge
+TOTAL_TOLERANCE = 0.005
+ZONE_FILES = ("prescription.geojson", "shapefile/BORON01.shp", "prescription.gpkg",
+              "TASKDATA/TASKDATA.XML")  # fmt: skip
+
+
+@dataclass(frozen=True, kw_only=True)
+class Verification:
+    """The answer: whole or not, every fault, and what the record says where there is one."""
+
+    whole: bool
+    faults: tuple[Fault, ...]
+    record: dict[str, Any] | None
+
+
+def verify(path: Path, *, boundary: Path | None = None) -> Verification:
+    """Verify a pack's folder, a TASKDATA folder or a single file.
+
+    Parameters
+    ----------
+    boundary
+        A boundary file to hold the zones to; a pack brings its own.
+    """
+    complete_swaps(path)
+    outline = _outline(boundary) if boundary is not None else None
+    if not path.exists():
+        return _answer([Fault(file=path.name, place="file", what="there is nothing here")], None)
+    if path.is_dir() and (path / "manifest.json").exists():
+        faults, record = _verify_pack(path, outline)
+        return _answer(faults, record)
+    if path.is_dir() and (path / "TASKDATA.XML").exists():
+        path = path / "TASKDATA.XML"
+    if path.is_dir():
+        what = "neither a pack (no manifest.json) nor a TASKDATA folder"
+        return _answer([Fault(file=path.name, place="folder", what=what)], None)
+    if path.suffix.lower() in (".tif", ".tiff"):
+        return _answer(_raster_faults(path), None)
+    if path.suffix.lower() == ".zip":
+        return _answer(_zip_faults(path, outline), None)
+    return _answer(zone_faults(path.name, read_zones(path), outline, None), None)
+
+
+def _answer(faults: list[Fault], record: dict[str, Any] | None) -> Verification:
+    return Verification(whole=not faults, faults=tuple(faults), record=record)
+
+
+def _outline(path: Path) -> Any:
+    from schorl.formats.outline import read_outline
+
+    return read_outline(path)
+
+
+def _verify_pack(folder: Path, outline: Any) -> tuple[list[Fault], dict[str, Any] | None]:
+    faults, manifest, summary = _records(folder)
+    if manifest is None or summary is None:
+        return faults, summary
+    faults += _manifest_faults(folder, manifest)
+    held = outline
+    package = folder / "prescription.gpkg"
+    if held is None and package.exists():
+        held = read_zones(package).boundary
+    for name in ZONE_FILES:
+        if (folder / name).exists():
+            faults += zone_faults(name, read_zones(folder / name), held, summary)
+    for raster in sorted((folder / "surfaces").glob("*.tif")):
+        faults += _raster_faults(raster)
+    faults += _total_faults(summary)
+    return faults, summary
+
+
+def _records(folder: Path) -> tuple[list[Fault], dict[str, Any] | None, dict[str, Any] | None]:
+    faults: list[Fault] = []
+    read: list[dict[str, Any] | None] = []
+    for name in ("manifest.json", "summary.json"):
+        try:
+            document = json.loads((folder / name).read_text(encoding="utf-8"))
+            read.append(document if isinstance(document, dict) else None)
+        except (OSError, ValueError) as reason:
+            faults.append(Fault(file=name, place="file", what=f"cannot be read: {reason}"))
+            read.append(None)
+    return faults, read[0], read[1]
+
+
+def _manifest_faults(folder: Path, manifest: dict[str, Any]) -> list[Fault]:
+    faults = []
+    listed = {row["path"]: row for row in manifest.get("files", [])}
+    for name, row in listed.items():
+        path = folder / name
+        if not path.is_file():
+            faults.append(Fault(file=name, place="file", what="is missing"))
+            continue
+        data = path.read_bytes()
+        if len(data) != row["bytes"] or hashlib.sha256(data).hexdigest() != row["sha256"]:
+            what = f"is not the file that was written ({len(data)} bytes, {row['bytes']} recorded)"
+            faults.append(Fault(file=name, place="file", what=what))
+    there = {one.relative_to(folder).as_posix() for one in folder.rglob("*") if one.is_file()}
+    for name in sorted(there - set(listed) - {"manifest.json"}):
+        faults.append(Fault(file=name, place="file", what="was not written with this pack"))
+    return faults
+
+
+def zone_faults(
+    name: str, read: FileZones, outline: Any, summary: dict[str, Any] | None
+) -> list[Fault]:
+    """Faults of a file's zones: geometry, cover, rates, and agreement with the record."""
+    faults = [Fault(file=name, place=one.place, what=one.what) for one in read.faults]
+    if not read.zones:
+        if not faults:
+            faults.append(Fault(file=name, place="file", what="there is no zone in it"))
+        return faults
+    for place, zone in enumerate(read.zones, start=1):
+        where = f"zone {zone.number}" if zone.number is not None else f"feature {place}"
+        faults += [Fault(file=name, place=where, what=what) for what in _one_zone(zone)]
+    if faults:
+        return faults
+    faults += _cover_faults(name, [zone.geometry for zone in read.zones], outline)
+    if summary is not None:
+        faults += _record_faults(name, read, summary)
+    return faults
+
+
+def _one_zone(zone: Any) -> list[str]:
+    said = []
+    if zone.number is None:
+        said.append("no zone number")
+    if zone.rate is None or not math.isfinite(zone.rate):
+        said.append(f"its rate is {zone.rate}")
+    elif zone.rate < 0:
+        said.append(f"its rate {zone.rate:g} is negative")
+    if zone.geometry is None or zone.geometry.is_empty:
+        said.append("it has no geometry")
+    elif zone.geometry.geom_type not in ("Polygon", "MultiPolygon"):
+        said.append(f"it is a {zone.geometry.geom_type}")
+    elif not zone.geometry.is_valid:
+        said.append(f"its geometry is invalid: {shapely.is_valid_reason(zone.geometry)}")
+    elif not _in_degrees(zone.geometry):
+        said.append("its coordinates are no longitude and latitude")
+    return said
+
+
+def _in_degrees(geometry: Any) -> bool:
+    west, south, east, north = geometry.bounds
+    return bool(-180 <= west <= east <= 180 and -90 <= south <= north <= 90)
+
+
+def _cover_faults(name: str, zones: list[Any], outline: Any) -> list[Fault]:
+    """Overlaps, gaps and what lies outside, in square metres."""
+    whole = shapely.union_all(zones)
+    west, south, east, north = whole.bounds
+    crs = field_crs((west + east) / 2, (south + north) / 2, west=west, east=east)
+    metres = [transform_geometry(one, source=WGS84, target=crs) for one in zones]
+    union = shapely.union_all(metres)
+    allowed = GAP_M2 + GAP_M2_PER_M * union.length
+    faults = []
+    overlap = sum(one.area for one in metres) - union.area
+    if overlap > allowed:
+        faults.append(Fault(file=name, place="zones", what=f"zones overlap by {overlap:.1f} m²"))
+    if outline is None:
+        return faults
+    field = transform_geometry(outline, source=WGS84, target=crs)
+    allowed = GAP_M2 + GAP_M2_PER_M * field.length
+    for what, area in (
+        ("lie outside the field", shapely.difference(union, field).area),
+        ("leave a gap in the field", shapely.difference(field, union).area),
+    ):
+        if area > allowed:
+            faults.append(Fault(file=name, place="zones", what=f"zones {what}: {area:.1f} m²"))
+    return faults
+
+
+def _record_faults(name: str, read: FileZones, summary: dict[str, Any]) -> list[Fault]:
+    """Rates, zones and total against the record."""
+    faults = []
+    recorded = {row["zone"]: row for row in summary["zones"]}
+    step = RATE_STEP[read.kind] * (1 + 1e-9) + 1e-9
+    total = 0.0
+    for zone in read.zones:
+        row = recorded.get(zone.number)
+        if row is None:
+            what = "is not in the record"
+            faults.append(Fault(file=name, place=f"zone {zone.number}", what=what))
+            continue
+        assert zone.rate is not None
+        if abs(zone.rate - row["product_rate"]) > step:
+            what = f"rate {zone.rate:g}, recorded {row['product_rate']:g}"
+            faults.append(Fault(file=name, place=f"zone {zone.number}", what=what))
+        total += zone.rate * area_ha(zone.geometry, crs=WGS84)
+    gone = set(recorded) - {zone.number for zone in read.zones}
+    for number in sorted(gone):
+        faults.append(Fault(file=name, place=f"zone {number}", what="is missing"))
+    said = summary["totals"]["product"]
+    if abs(total - said) > TOTAL_TOLERANCE * max(said, 1.0):
+        what = f"its rates add up to {total:.1f}, recorded {said:.1f}"
+        faults.append(Fault(file=name, place="total", what=what))
+    return faults
+
+
+def _total_faults(summary: dict[str, Any]) -> list[Fault]:
+    faults = []
+    for key, rate in (("product", "product_rate"), ("boron_kg", "boron_kg_ha")):
+        total = sum(row["area_ha"] * row[rate] for row in summary["zones"])
+        said = summary["totals"][key]
+        if abs(total - said) > 1e-6 * max(abs(said), 1.0):
+            what = f"{key} {said:g} is not the sum of area times rate, {total:g}"
+            faults.append(Fault(file="summary.json", place="totals", what=what))
+    for row in summary["zones"]:
+        held = {k: v for k, v in row["limits_kg_ha"].items() if k != "need" and v is not None}
+        most = min(held.values(), default=math.inf)
+        if row["boron_kg_ha"] > most + 1e-6:
+            what = f"{row['boron_kg_ha']:g} kg B/ha is above its limit {most:g}"
+            faults.append(Fault(file="summary.json", place=f"zone {row['zone']}", what=what))
+    return faults
+
+
+def _raster_faults(path: Path) -> list[Fault]:
+    """Read every block: a file cut short still has a sound header."""
+    import rasterio
+
+    try:
+        with rasterio.open(path) as source:
+            values = source.read(1, masked=True)
+            if source.crs is None:
+                return [Fault(file=path.name, place="header", what="no coordinate system")]
+            if source.nodata is None:
+                return [Fault(file=path.name, place="header", what="no value for missing cells")]
+            if not np.isfinite(values.compressed()).all():
+                return [Fault(file=path.name, place="cells", what="cells that are not numbers")]
+            if values.count() == 0:
+                return [Fault(file=path.name, place="cells", what="no cell has a value")]
+            if path.stem == "rate" and (values.compressed() < 0).any():
+                return [Fault(file=path.name, place="cells", what="negative rates")]
+    except Exception as reason:  # whatever a broken file does to the reader
+        return [Fault(file=path.name, place="file", what=f"cannot be read: {reason}")]
+    return []
+
+
+def _zip_faults(path: Path, outline: Any) -> list[Fault]:
+    """A zipped shapefile: unpacked to names of ours, then read as any other."""
+    import tempfile
+    import zipfile
+
+    try:
+        with zipfile.ZipFile(path) as archive, tempfile.TemporaryDirectory() as folder:
+            for info in archive.infolist()[:20]:
+                suffix = Path(info.filename).suffix.lower()
+                if suffix in (".shp", ".shx", ".dbf", ".prj", ".cpg") and info.file_size < 2**26:
+                    Path(folder, f"zipped{suffix}").write_bytes(archive.read(info))
+            inner = Path(folder, "zipped.shp")
+            if not inner.exists():
+                return [Fault(file=path.name, place="archive", what="no shapefile in it")]
+            return zone_faults(path.name, read_zones(inner), outline, None)
+    except (zipfile.BadZipFile, OSError, NotImplementedError) as reason:
+        return [Fault(file=path.name, place="archive", what=f"cannot be read: {reason}")]
