@@ -45,11 +45,11 @@ def _named(field: Field) -> str:
 
 def _polygons(path: Path, features: Features) -> list[Polygon]:
     parts: list[Polygon] = []
-    for place, geometry in enumerate(features.geometries, start=1):
-        if geometry is None or geometry.is_empty:
+    for place, drawn in enumerate(features.geometries, start=1):
+        if drawn is None or drawn.is_empty:
             continue
-        if geometry.geom_type == "LineString" and geometry.is_ring:
-            geometry = Polygon(geometry)
+        closed = drawn.geom_type == "LineString" and drawn.is_ring
+        geometry = Polygon(drawn) if closed else drawn
         if geometry.geom_type not in ("Polygon", "MultiPolygon"):
             raise refuse(
                 "IN-NOT-AREA",

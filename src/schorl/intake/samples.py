@@ -87,7 +87,9 @@ def _read(path: Path, field: Field, hints: SampleHints, draft: Draft) -> SampleS
         draft.note("IN-NO-ROWS", "no sample is left to read")
         return None
     ids = _ids(table, chosen, rows, draft)
-    places = _places(path, table, chosen, rows, features, ids, field, hints, draft)
+    places = _places(
+        table, chosen, rows, ids, features=features, field=field, hints=hints, draft=draft
+    )
     campaign = _campaign(table, chosen, hints, draft)
     properties, constants, volume = _properties(table, chosen, rows, ids, hints, draft)
     if draft.broken or places is None or campaign is None:
@@ -183,12 +185,12 @@ class Places:
 
 
 def _places(
-    path: Path,
     table: Table,
     chosen: Chosen,
     rows: list[int],
-    features: Features | None,
     ids: tuple[str, ...],
+    *,
+    features: Features | None,
     field: Field,
     hints: SampleHints,
     draft: Draft,
@@ -204,7 +206,16 @@ def _places(
     for first, second, system in pairs:
         if first is None or second is None:
             continue
-        return _from_columns(table, (first, second), rows, ids, system, field, hints, draft)
+        return _from_columns(
+            table,
+            (first, second),
+            rows,
+            ids,
+            system=system,
+            field=field,
+            hints=hints,
+            draft=draft,
+        )
     draft.note(
         "IN-NO-PLACE",
         "no columns of coordinates were understood",
@@ -289,6 +300,7 @@ def _from_columns(
     columns: tuple[int, int],
     rows: list[int],
     ids: tuple[str, ...],
+    *,
     system: str | None,
     field: Field,
     hints: SampleHints,
@@ -395,7 +407,7 @@ def _properties(
         column = chosen.properties.get(name)
         if column is None:
             continue
-        read = measured_values(table, column, name, rows, ids, hints, draft)
+        read = measured_values(table, column, name, rows, ids, hints=hints, draft=draft)
         if read is None:
             continue
         volume = volume or read.per_volume

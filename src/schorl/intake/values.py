@@ -40,6 +40,7 @@ def measured_values(
     name: str,
     rows: list[int],
     ids: tuple[str, ...],
+    *,
     hints: SampleHints,
     draft: Draft,
 ) -> Read | None:

@@ -77,7 +77,9 @@ def assess_cells(
     if held:
         what = f"the target was lowered to {target.min():.2f} mg/kg at the lowest"
         found.append(finding("RATE-CEILING-TARGET", where="target", what=what))
-    need = _need(samples, surfaces, grid, settings, crop, soil, target, ceiling)
+    need = _need(
+        samples, surfaces, grid, settings, crop=crop, soil=soil, target=target, ceiling=ceiling
+    )
     at_samples = _need_at_samples(samples, grid, need)
     found.extend(_status_notes([*sources, *more]))
     if crop.perennial:
@@ -209,6 +211,7 @@ def _need(
     surfaces: Mapping[str, Surface],
     grid: CellGrid,
     settings: RunSettings,
+    *,
     crop: Crop,
     soil: Soil,
     target: Floats,
@@ -356,10 +359,13 @@ def _need_at_samples(samples: SampleSet, grid: CellGrid, need: CellNeed) -> Floa
 
 
 def _status_notes(sources: list[Mapping[str, str]]) -> list[Finding]:
-    notes = []
+    """One note a table and status: figures that rule here and were not read at their source."""
+    groups: dict[tuple[str, str], list[str]] = {}
     for row in sources:
         if row["status"] in ("MEMORY", "PROPOSAL", "COMMON_PRACTICE_NO_SOURCE"):
-            said = row["status"].replace("_", " ").lower()
-            what = f"{row['row']}: {row['value']} {row['unit']} is {said}"
-            notes.append(finding("RATE-STATUS", where=f"table {row['table']}", what=what))
-    return notes
+            key = (row["table"], row["status"].replace("_", " ").lower())
+            groups.setdefault(key, []).append(f"{row['row']} {row['value']}")
+    return [
+        finding("RATE-STATUS", where=f"table {name}", what=f"{status}: {', '.join(rows)}")
+        for (name, status), rows in groups.items()
+    ]

@@ -38,6 +38,7 @@ __all__ = ["Assessed", "Rated", "assess_cells", "plan_outcome", "prescribe_rates
 #: Error of a predicted saving in trials on simulated fields, as a share of the flat loss, by
 #: number of samples; twice this is the range that is shown.
 SAVING_ERROR = ((30, 0.09), (60, 0.06), (120, 0.05))
+FEW_SAMPLES = 3
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -277,21 +278,28 @@ def _saving(value: tuple[PlanValue, ...], samples: int) -> tuple[float, float, f
 
 def _findings(prescription: Prescription, need: CellNeed, settings: RunSettings) -> list[Finding]:
     found = []
-    for rate in prescription.rates:
-        where = f"zone {rate.zone}"
-        if rate.boron_kg_ha and rate.doubled_pass_mg_kg > rate.ceiling_mg_kg:
-            what = f"a doubled pass would bring soil boron to {rate.doubled_pass_mg_kg:.1f} mg/kg"
-            found.append(finding("RATE-DOUBLED", where=where, what=what))
-        if rate.boron_kg_ha and rate.samples < 3:
-            what = f"{rate.samples} samples lie in this zone"
-            found.append(finding("RATE-FEW", where=where, what=what))
+    treated = [rate for rate in prescription.rates if rate.boron_kg_ha]
+    doubled = [rate for rate in treated if rate.doubled_pass_mg_kg > rate.ceiling_mg_kg]
+    if doubled:
+        worst = max(rate.doubled_pass_mg_kg for rate in doubled)
+        what = f"a doubled pass would bring soil boron to {worst:.1f} mg/kg, over the ceiling"
+        found.append(finding("RATE-DOUBLED", where=_zones_named(doubled), what=what))
+    few = [rate for rate in treated if rate.samples < FEW_SAMPLES]
+    if few and prescription.zone_map.origin != "sample zones":
+        what = f"fewer than {FEW_SAMPLES} samples lie in it"
+        found.append(finding("RATE-FEW", where=_zones_named(few), what=what))
     over = chance_over_ceiling(need, 0.0, unevenness=unevenness_of(settings))
     share = float((over >= limit("hot-chance")).mean())
     if share > 0:
         what = f"{100 * share:.1f} % of the field is likely over its ceiling before any boron"
         found.append(finding("RATE-OVER", where="field", what=what))
-    treated = sorted((r.boron_kg_ha for r in prescription.rates if r.boron_kg_ha), reverse=True)
-    if len(treated) > 1 and treated[0] > 3.0 * treated[1]:
-        what = f"the highest rate, {treated[0]:.2f} kg B/ha, is over three times the next"
+    ranked = sorted((rate.boron_kg_ha for rate in treated), reverse=True)
+    if len(ranked) > 1 and ranked[0] > 3.0 * ranked[1]:
+        what = f"the highest rate, {ranked[0]:.2f} kg B/ha, is over three times the next"
         found.append(finding("RATE-BIG", where="rates", what=what))
     return found
+
+
+def _zones_named(rates: list[ZoneRate]) -> str:
+    numbers = ", ".join(str(rate.zone) for rate in rates)
+    return f"zone{'s' if len(rates) > 1 else ''} {numbers}"
