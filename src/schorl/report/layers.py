@@ -148,9 +148,7 @@ def _even(  # the same for all layers whose classes come from the values
     )
 
 
-def _chance(
-    key: str, name: str, chances: Floats, breaks: tuple[float, ...], note: str
-) -> Layer:
+def _chance(key: str, name: str, chances: Floats, breaks: tuple[float, ...], note: str) -> Layer:
     scale = scales.fixed_scale(breaks, scales.UNSURE, decimals=0)
     return Layer(
         key=key,

@@ -60,7 +60,9 @@ def path_of(area: Area, sheet: Sheet) -> str:
     """Path data of polygons, holes included, rounded to decimetres."""
     parts = area.geoms if isinstance(area, MultiPolygon) else (area,)
     rings = [ring for part in parts for ring in (part.exterior, *part.interiors)]
-    return "".join(_ring(np.asarray(ring.coords)[:-1], sheet) for ring in rings if not ring.is_empty)
+    return "".join(
+        _ring(np.asarray(ring.coords)[:-1], sheet) for ring in rings if not ring.is_empty
+    )
 
 
 def _ring(points: np.ndarray, sheet: Sheet) -> str:
@@ -281,7 +283,9 @@ def furniture(sheet: Sheet, *, us: bool) -> Safe:
             shape("path", line),
             shape("text", label | {"fill": "#111"}, said),
             shape("path", {"d": arrow, "fill": "#111"}),
-            shape("text", north | {"text-anchor": "middle", "font-weight": "700", "fill": "#111"}, "N"),
+            shape(
+                "text", north | {"text-anchor": "middle", "font-weight": "700", "fill": "#111"}, "N"
+            ),
         ]
     )
 

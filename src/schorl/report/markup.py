@@ -30,7 +30,7 @@ def join(parts: Iterable[object], between: str = "") -> Safe:
     return Safe(between.join(text(part) for part in parts))
 
 
-def tag(name: str, *children: object, **attributes: object) -> Safe:
+def tag(name: str, /, *children: object, **attributes: object) -> Safe:
     """An element; ``class_`` and ``for_`` lose their underscore, others become hyphens.
 
     An attribute that is None or False is left out, True stands by its name alone.

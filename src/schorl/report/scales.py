@@ -94,7 +94,7 @@ def fixed_scale(breaks: tuple[float, ...], colours: tuple[str, ...], *, decimals
 
 
 def class_labels(breaks: tuple[float, ...], decimals: int) -> tuple[str, ...]:
-    """"under a", "a to b", ..., "z and over"."""
+    """ "under a", "a to b", ..., "z and over"."""
     said = [figure(value, decimals) for value in breaks]
     middle = [f"{a} to {b}" for a, b in zip(said, said[1:], strict=False)]
     return (f"under {said[0]}", *middle, f"{said[-1]} and over")

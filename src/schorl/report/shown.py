@@ -136,7 +136,9 @@ class Shown:
 
     def length(self, metres: float, decimals: int = 0) -> str:
         """A distance with its unit."""
-        return f"{figure(metres / units.M_PER_FT if self.us else metres, decimals)} {self.length_unit}"
+        return (
+            f"{figure(metres / units.M_PER_FT if self.us else metres, decimals)} {self.length_unit}"
+        )
 
     def speed(self, km_h: float) -> str:
         """A speed with its unit."""

@@ -1,0 +1,301 @@
+"""Sections of the page about the rates: answer, zones, what ruled, before and after, worth."""
+
+from __future__ import annotations
+
+from schorl.agronomy.cautions import cautions
+from schorl.findings import Severity
+from schorl.model.prescription import Limit, Outlook
+from schorl.model.record import RunRecord
+from schorl.model.settings import Placement
+from schorl.report import charts, map_svg, scales
+from schorl.report.layers import doubtful_places
+from schorl.report.machine_words import load_rows, point_rows, setting_rows
+from schorl.report.markup import Safe, join, table, tag
+from schorl.report.shown import UNKNOWN, Shown, figure, percent
+from schorl.report.words import RULED, areas_ha, kind_words, what_to_do
+
+
+def section(anchor: str, title: str, *children: object) -> Safe:
+    """A part of the page under its heading."""
+    head = tag("h2", title, id=f"{anchor}-head")
+    return tag("section", head, *children, id=anchor, aria_labelledby=f"{anchor}-head")
+
+
+def answer(record: RunRecord, shown: Shown) -> Safe:
+    """Four figures and the paragraph of what to do."""
+    prescription, look = record.prescription, record.prescription.field_outlook
+    fed_ha, left_ha = areas_ha(record)
+    doubtful = doubtful_places(record)
+    doubt_ha = doubtful.fed_ha + doubtful.left_ha
+    boron = f"{shown.boron(prescription.boron_kg)} boron in it"
+    cards = [
+        ("Take to the field", shown.amount(prescription.product_total), boron),
+        ("Treated", shown.area(fed_ha), _rate_span(record, shown)),
+        ("Untreated", shown.area(left_ha), "shut off there"),
+        (
+            "Likely short",
+            f"{percent(look.short_before)} → {percent(look.short_after)}",
+            f"of the area, before and after; {shown.area(doubt_ha)} doubtful",
+        ),
+    ]
+    boxes = [
+        tag("div", tag("dt", name), tag("dd", tag("b", value), tag("span", more)))
+        for name, value, more in cards
+    ]
+    paragraph = tag("p", what_to_do(record, shown), class_="lead")
+    return join([tag("dl", *boxes, class_="answer"), paragraph])
+
+
+def _rate_span(record: RunRecord, shown: Shown) -> str:
+    rates = [one.product_rate for one in record.prescription.rates if one.product_rate > 0]
+    if not rates:
+        return "nothing anywhere"
+    low, high = shown.rate_figure(min(rates)), shown.rate_figure(max(rates))
+    return f"{low} {shown.rate_unit}" if low == high else f"{low} to {high} {shown.rate_unit}"
+
+
+def take_care(record: RunRecord) -> Safe:
+    """Warnings of this run, limits that a person set, and advice; the general cautions below."""
+    warned = [one for one in record.findings if one.severity is not Severity.NOTE]
+    items = [
+        tag("li", tag("b", f"{one.where}: "), one.what, tag("span", f" {one.hint}", class_="soft"))
+        for one in warned
+    ]
+    items += [
+        tag(
+            "li",
+            tag("b", f"{one.what} set to {one.value:g} {one.unit} by {one.person}."),
+            f" {one.reason}",
+        )
+        for one in record.settings.overrides
+    ]
+    items += [tag("li", said) for said in record.prescription.advice]
+    if not items:
+        items = [tag("li", "This run raised no warning of its own.")]
+    return tag("div", tag("h2", "Before spreading"), tag("ul", *items), class_="care")
+
+
+def caution_section(record: RunRecord) -> Safe:
+    """The usual cautions."""
+    said = cautions(foliar=record.settings.placement is Placement.FOLIAR)
+    return section("cautions", "Cautions", tag("ul", *(tag("li", one) for one in said)))
+
+
+def zone_section(record: RunRecord, shown: Shown) -> Safe:
+    """One row a zone: boron on a shared axis, chances, rate, and why."""
+    axis = charts.boron_axis(record)
+    prescription = record.prescription
+    fills = map_svg.rate_colours(prescription)
+    head = [
+        "Zone", join([f"Boron, {_unit(record)}", charts.ladder_scale(axis)]),
+        f"Area, {shown.area_unit}", "Samples", "Mean ± SD", "Target", "Clay, %", "Organic matter, %",
+        "Short now → after", "Over after", f"Boron, {shown.boron_rate_unit}",
+        f"Rate, {shown.rate_unit}", "Why",
+    ]  # fmt: skip
+    rows = []
+    for place, rate in enumerate(prescription.rates):
+        look, zone = rate.outlook, prescription.zone_map.zones[place]
+        kind = "" if zone.kind == "zone" else tag("span", kind_words(zone.kind), class_="soft")
+        rows.append(
+            [
+                join([tag("b", rate.zone), " ", kind]),
+                charts.ladder(record, place, axis),
+                shown.area_figure(rate.area_ha),
+                str(rate.samples),
+                f"{figure(rate.boron_mean_mg_kg, 2)} ± {figure(rate.boron_sd_mg_kg, 2)}",
+                figure(rate.target_mg_kg, 2),
+                figure(rate.clay_pct, 0),
+                figure(rate.organic_matter_pct, 1),
+                f"{100 * look.short_before:.0f} → {percent(look.short_after)}",
+                percent(look.over_after),
+                shown.boron_rate_figure(rate.boron_kg_ha),
+                _rate_cell(shown.rate_figure(rate.product_rate), fills[rate.product_rate]),
+                tag("span", rate.why, class_="why"),
+            ]
+        )
+    key = (
+        "Thick bar: where the mean of the zone lies, 9 times in 10. Thin line: where single places "
+        "lie, 9 times in 10. Ticks: samples. Blue line: target. Dashed line: soil ceiling."
+    )
+    return section(
+        "zones", "Zones and their rates", table(head, rows, caption="Zones and their rates"),
+        tag("p", key, class_="soft"), tag("p", prescription.zone_map.reason),
+    )  # fmt: skip
+
+
+def _rate_cell(said: str, fill: str) -> Safe:
+    return join([charts.swatch(fill), tag("b", said)])
+
+
+def _unit(record: RunRecord) -> str:
+    return record.surfaces["boron"].unit if "boron" in record.surfaces else "mg/kg"
+
+
+def ruled_section(record: RunRecord, shown: Shown) -> Safe:
+    """Every limit that was tried for every zone; the one that ruled is marked."""
+    rates = record.prescription.rates
+    names = list(dict.fromkeys(name for rate in rates for name in rate.limits_kg_ha))
+    names = [name for name in names if name != str(Limit.NEED)]
+    head = ["Zone", "Asked for", *names, "Given", "Held by"]
+    rows = []
+    for rate in rates:
+        ruled = str(rate.ruled_by)
+        asked = _limit(shown.boron_rate_figure(rate.need_kg_ha), ruled == str(Limit.NEED))
+        cells = [
+            _limit(shown.boron_rate_figure(rate.limits_kg_ha.get(name)), ruled == name)
+            for name in names
+        ]
+        given = shown.boron_rate_figure(rate.boron_kg_ha)
+        rows.append([str(rate.zone), asked, *cells, given, tag("span", RULED[rate.ruled_by])])
+    note = (
+        f"Boron in {shown.boron_rate_unit}. The lowest figure of a row wins; it is marked ◂. The "
+        "machine then rounds down to what it can hold."
+    )
+    doubled = [
+        f"zone {rate.zone} {figure(rate.doubled_pass_mg_kg, 2)}"
+        for rate in rates
+        if rate.boron_kg_ha > 0
+    ]
+    twice = ""
+    if doubled:
+        twice = (
+            f"A pass given twice would lift the soil ({_unit(record)}) to: {', '.join(doubled)}."
+        )
+    return section(
+        "ruled", "What ruled the rates", table(head, rows, caption="Limits of each zone"),
+        tag("p", note, class_="soft"), tag("p", twice) if twice else "",
+    )  # fmt: skip
+
+
+def _limit(said: str, ruled: bool) -> object:
+    return tag("b", f"{said} ◂", class_="ruler") if ruled else said
+
+
+def outlook_section(record: RunRecord, shown: Shown) -> Safe:
+    """Chance and area short and over, before and after, for the field and every zone."""
+    head = [
+        "Where", "Short before", "Short after", f"Short, {shown.area_unit} before → after",
+        "Over before", "Over after", f"Over, {shown.area_unit} before → after",
+    ]  # fmt: skip
+    rows = [_outlook_row("Whole field", record.prescription.field_outlook, shown)]
+    rows += [
+        _outlook_row(f"Zone {rate.zone}", rate.outlook, shown) for rate in record.prescription.rates
+    ]
+    note = (
+        "Short: available boron below the target. Over: above the soil ceiling. After, for short: "
+        "as if 30 % of the boron given shows in the next soil test; for over: as if all of it "
+        "stays. Chances come from the spread of the map and of the soil within a cell."
+    )
+    return section(
+        "outlook", "Before and after", table(head, rows, caption="Chances before and after"),
+        tag("p", note, class_="soft"),
+    )  # fmt: skip
+
+
+def _outlook_row(name: str, look: Outlook, shown: Shown) -> list[object]:
+    def bar(share: float) -> Safe:
+        return join([charts.share_bar(share, percent(share)), " ", percent(share)])
+
+    short = f"{shown.area_figure(look.short_before_ha)} → {shown.area_figure(look.short_after_ha)}"
+    over = f"{shown.area_figure(look.over_before_ha)} → {shown.area_figure(look.over_after_ha)}"
+    return [
+        name, bar(look.short_before), bar(look.short_after), short,
+        bar(look.over_before), bar(look.over_after), over,
+    ]  # fmt: skip
+
+
+def value_section(record: RunRecord, shown: Shown) -> Safe:
+    """What zoning is worth against one rate, and why this number of zones."""
+    prescription, zone_map = record.prescription, record.prescription.zone_map
+    head = [
+        "Plan", "Boron", f"Loss, {shown.boron_unit} boron", f"Short, {shown.area_unit}",
+        f"Over, {shown.area_unit}",
+    ]  # fmt: skip
+    rows = [
+        [
+            plan.plan.capitalize(),
+            shown.boron(plan.boron_kg),
+            shown.boron(plan.loss_kg).split()[0],
+            shown.area_figure(plan.short_ha),
+            shown.area_figure(plan.over_ha),
+        ]
+        for plan in prescription.value
+    ]
+    note = (
+        "Loss: boron expected to be missing where the soil is short, plus boron given where it is "
+        "not needed, summed over the field."
+    )
+    parts: list[object] = [
+        tag("p", _saving_words(record)),
+        table(head, rows, caption="Three plans on the same soil") if rows else "",
+        tag("p", note, class_="soft"),
+    ]
+    if zone_map.table:
+        bars = [(row.count, row.saving, row.saving_low, row.saving_high) for row in zone_map.table]
+        words = (
+            "Share of the loss of one flat rate that each number of zones saves; line: its range."
+        )
+        figure_ = tag("figure", charts.saving_bars(bars, zone_map.count), tag("figcaption", words))
+        parts.append(tag("div", figure_, _index_words(record), class_="pair"))
+    return section("value", "What zoning is worth", *parts)
+
+
+def _saving_words(record: RunRecord) -> str:
+    saving = record.prescription.saving
+    if saving is None:
+        return "The saving against one flat rate was not worked out."
+    low, middle, high = saving
+    return (
+        f"Against the best flat rate, these zones save about {percent(max(middle, 0.0))} of the expected "
+        f"loss (range {_signed(low)} to {_signed(high)}). {_sentence(record.prescription.zone_map.reason)}"
+    )
+
+
+def _sentence(said: str) -> str:
+    return said[:1].upper() + said[1:] + ("" if said.endswith(".") else ".") if said else ""
+
+
+def _signed(share: float) -> str:
+    return f"−{percent(-share)}" if share < 0 else percent(share)
+
+
+def _index_words(record: RunRecord) -> Safe:
+    zone_map = record.prescription.zone_map
+    said = [f"Origin of the zones: {zone_map.origin}."]
+    if zone_map.structure_p is not None:
+        said.append(f"Chance that the pattern of need is accident: p = {zone_map.structure_p:.3g}.")
+    if zone_map.classes_found is not None:
+        said.append(f"Groups found among the samples alone: {zone_map.classes_found}.")
+    if zone_map.too_narrow_ha > 0.005:
+        said.append(f"Too narrow for the machine to follow: {zone_map.too_narrow_ha:.2f} ha.")
+    for row in zone_map.table:
+        if row.count == zone_map.count and row.indices:
+            pairs = ", ".join(f"{name} {value:.3g}" for name, value in row.indices.items())
+            said.append(f"For information only: {pairs}.")
+    return tag("ul", *(tag("li", one) for one in said), class_="plainlist")
+
+
+def machine_section(record: RunRecord, shown: Shown) -> Safe:
+    """What the machine is set to, calibrated with and loaded."""
+    points = point_rows(record, shown)
+    count = len(points[0]) - 1 if points else 0
+    head = ["", *("Lowest", "Mean", "Highest")[:count]]
+    settings = [[name, tag("span", value)] for name, value in setting_rows(record, shown)]
+    loads = [[name, tag("span", value)] for name, value in load_rows(record, shown)]
+    return section(
+        "machine", "Machine",
+        table(head, points, caption="Calibration figures") if points else tag("p", UNKNOWN),
+        tag(
+            "div",
+            table(["Load", ""], loads, caption="What to load"),
+            table(["Set", ""], settings, caption="What to set"),
+            class_="pair",
+        ),
+        tag("ul", *(tag("li", one) for one in record.prescription.machine.advice)),
+    )  # fmt: skip
+
+
+__all__ = [
+    "answer", "caution_section", "machine_section", "outlook_section", "ruled_section", "scales",
+    "section", "take_care", "value_section", "zone_section",
+]  # fmt: skip
