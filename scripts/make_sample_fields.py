@@ -54,7 +54,7 @@ class Soil:
     def boron_mg_kg(self, points: np.ndarray, *, level: float = 1.0) -> np.ndarray:
         """Available boron of the soil itself, without sampling or laboratory error."""
         clay, matter = self.clay_pct(points), self.matter_pct(points)
-        plain = 0.10 + 0.017 * clay + 0.09 * (matter - 1.5)
+        plain = 0.26 + 0.026 * clay + 0.12 * (matter - 1.5)
         return level * np.clip(plain, 0.08, None) * np.exp(0.14 * self._smooth("boron", points))
 
     def measured(self, truth: np.ndarray, *, short: float, lab: float) -> np.ndarray:
@@ -103,6 +103,14 @@ def grid_points(field: Polygon, count: int, random: np.random.Generator) -> np.n
         step *= 0.99
 
 
+#: Where ash was tipped long ago: one sample there is over every ceiling.
+OLD_HEAP = np.array([860.0, 110.0])
+
+
+def _nearest(points: np.ndarray, place: np.ndarray) -> int:
+    return int(np.hypot(*(points - place).T).argmin())
+
+
 def long_acre(random: np.random.Generator) -> None:
     """50 ha with a pond, 60 grid samples in two seasons."""
     origin = (412_300.0, 5_768_400.0)
@@ -121,10 +129,11 @@ def long_acre(random: np.random.Generator) -> None:
     field = Polygon(place + np.array(outer), [place + np.array(pond)])
     soil = Soil(random, origin=origin)
     points = grid_points(field, 60, random)
-    for season, level in ((2025, 0.92), (2026, 1.0)):
+    for season, level in ((2025, 0.80), (2026, 0.88)):
         folder = OUT / "long_acre" / str(season)
         write_geojson(folder / "boundary.geojson", [({"field": "Long Acre"}, field)])
         boron = soil.measured(soil.boron_mg_kg(points, level=level), short=0.08, lab=0.08)
+        boron[_nearest(points, place + OLD_HEAP)] = 2.35 if season == 2026 else 2.41
         clay = soil.measured(soil.clay_pct(points), short=0.05, lab=0.03)
         matter = soil.measured(soil.matter_pct(points), short=0.05, lab=0.03)
         lines = ["Sample,Longitude,Latitude,B hot water (mg/kg),OM (%),Clay (%),pH"]

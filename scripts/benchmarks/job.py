@@ -11,6 +11,7 @@ import subprocess
 import sys
 import tempfile
 import time
+from collections.abc import Callable
 from pathlib import Path
 
 ROOT = Path(__file__).resolve().parents[2]
@@ -33,7 +34,7 @@ def main(_arguments: list[str]) -> int:
     rows = [
         ("imports alone", lambda folder: [sys.executable, "-c", libraries]),
         ("schorl --help", lambda folder: [sys.executable, "-m", "schorl", "--help"]),
-        ("prescribe, 5 m", lambda folder: _job(folder)),
+        ("prescribe, 5 m", _job),
     ]
     print(f"{'what':<18}{'median s':>10}{'least s':>10}{'peak MB':>10}")
     for name, command in rows:
@@ -48,7 +49,7 @@ def _job(folder: Path) -> list[str]:
     return [sys.executable, "-c", WATCHED, *job]
 
 
-def _measured(command) -> tuple[list[float], float]:
+def _measured(command: Callable[[Path], list[str]]) -> tuple[list[float], float]:
     seconds, peak = [], 0.0
     for _ in range(RUNS):
         folder = Path(tempfile.mkdtemp())

@@ -14,9 +14,6 @@ COMMANDS = {
     "check": "List everything the checks notice, without making rates.",
     "prescribe": "Make the prescription: surfaces, zones, rates, files, report.",
     "verify": "Say whether a pack or file is whole, valid and what its record says.",
-    "compare": "Compare a field's seasons: what changed, is it real.",
-    "adapt": "The same boron through another product, machine or controller profile.",
-    "tissue": "Judge leaf, sap and brix checks: is a foliar pass warranted, and where.",
     "tables": "Show the figures Schorl works with, each with its source.",
     "explain": "Explain a finding code in full.",
 }

@@ -92,7 +92,7 @@ class Profile:
             return np.zeros(len(logits))
         range_z = (np.log(range_m) - np.log(self.longest_m / RANGE_PRIOR_FRACTION)) / RANGE_PRIOR_SD
         share_z = (logits - SHARE_PRIOR_MEAN) / SHARE_PRIOR_SD
-        return -0.5 * (range_z**2 + share_z**2)
+        return np.asarray(-0.5 * (range_z**2 + share_z**2))
 
     def peak(self, range_m: float, column: int = 0) -> Peak:
         """Best share at a range: a grid of logits, refined around its best point."""

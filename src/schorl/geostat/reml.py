@@ -240,7 +240,7 @@ def restricted_log_likelihood(covariance: Floats, values: Floats) -> float:
     weight = float(ones @ ones)
     residual = scores - ones * float(ones @ scores) / weight
     count = len(values)
-    return -0.5 * (
+    return -0.5 * float(
         (count - 1) * np.log(2.0 * np.pi)
         + 2.0 * float(np.log(np.diag(lower)).sum())
         + np.log(weight)

@@ -266,7 +266,7 @@ def _from_zone_layer(
 ) -> Places | None:
     assert hints.zone_layer is not None
     features = read_features(hints.zone_layer, layer=None, crs=None, option="samples")
-    named = {}
+    named: dict[str, Any] = {}
     column = hints.zone_column
     for row, geometry in zip(features.attributes, features.geometries, strict=True):
         keys = [column] if column else [key for key in row if key.lower() in ("zone", "name", "id")]

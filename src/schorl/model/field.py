@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from typing import TypeAlias
 
 import numpy as np
 import shapely
@@ -11,7 +12,7 @@ from shapely.geometry import MultiPolygon, Polygon
 
 from schorl.model.arrays import Flags, Floats, locked
 
-Area = Polygon | MultiPolygon
+Area: TypeAlias = Polygon | MultiPolygon
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -277,20 +277,9 @@ def _surface(
     verdict: Verdict,
     reason: str,
 ) -> Surface:
-    location, variance = _flat(data, fitted) if verdict is Verdict.NONE else (None, None)
-    if location is None or variance is None:
-        drawn, common = krige(
-            data.places, fitted.draws, grid.centres_m, fitted.fit.variogram,
-            block_m=grid.cell_m, support=data.support,
-        )  # fmt: skip
-        location, variance = pooled(drawn, common)
-        micro = fitted.fit.variogram.micro_variance
-    else:
-        location = np.full(grid.n_cells, location)
-        variance = np.full(grid.n_cells, variance)
-        # Without a pattern all variation but the laboratory's is real and anywhere.
-        total = fitted.fit.nugget + fitted.fit.partial_sill
-        micro = max(total - fitted.fit.lab_variance, 0.0)
+    location, variance, micro = (
+        _flat(data, fitted, grid) if verdict is Verdict.NONE else _kriged(data, fitted, grid)
+    )
     decision = variance + micro
     estimate = np.exp(location + 0.5 * decision) if fitted.transform == "log" else location
     if data.name != "boron":
@@ -311,11 +300,24 @@ def _surface(
     )
 
 
-def _flat(data: _Data, fitted: _Fitted) -> tuple[float, float]:
-    """Mean and its variance where there is no pattern."""
+def _kriged(data: _Data, fitted: _Fitted, grid: CellGrid) -> tuple[Floats, Floats, float]:
+    """Location and variance of every cell, and the short-range variance on top."""
+    drawn, common = krige(
+        data.places, fitted.draws, grid.centres_m, fitted.fit.variogram,
+        block_m=grid.cell_m, support=data.support,
+    )  # fmt: skip
+    location, variance = pooled(drawn, common)
+    return location, variance, fitted.fit.variogram.micro_variance
+
+
+def _flat(data: _Data, fitted: _Fitted, grid: CellGrid) -> tuple[Floats, Floats, float]:
+    """The mean, its variance, and all variation but the laboratory's: real, and anywhere."""
     values = fitted.middle
     between = float(np.var(fitted.draws.mean(axis=0), ddof=1)) if fitted.draws.shape[1] > 1 else 0.0
-    return float(values.mean()), float(np.var(values, ddof=1)) / len(values) + between
+    variance = float(np.var(values, ddof=1)) / len(values) + between
+    micro = max(fitted.fit.nugget + fitted.fit.partial_sill - fitted.fit.lab_variance, 0.0)
+    cells = np.ones(grid.n_cells)
+    return float(values.mean()) * cells, variance * cells, micro
 
 
 def _audited(
