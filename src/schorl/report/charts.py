@@ -38,7 +38,8 @@ class Axis:
         """Round values along the axis."""
         step = round_step((self.high - self.low) / about)
         first = np.ceil(self.low / step - 1e-9) * step
-        return [float(v) for v in np.arange(first, self.high + step * 1e-6, step)]
+        values = np.arange(first, self.high + step * 1e-6, step)
+        return [0.0 if abs(v) < step * 1e-6 else float(v) for v in values]
 
 
 def label(x: float, y: float, said: str, anchor: str = "middle", **more: object) -> Safe:

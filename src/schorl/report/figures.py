@@ -8,8 +8,8 @@ from importlib.resources import as_file, files
 from typing import Any
 
 from schorl.model.record import RunRecord
-from schorl.report.map_svg import rate_map_svg
 from schorl.report.words import shown_of, what_to_do
+from schorl.report.zones_svg import rate_map_svg
 
 PICTURE_PPI = 150.0
 

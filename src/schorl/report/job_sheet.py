@@ -13,9 +13,9 @@ from schorl.model.record import RunRecord
 from schorl.model.settings import Placement
 from schorl.report.figures import engrave, template
 from schorl.report.machine_words import load_rows, point_rows, setting_rows
-from schorl.report.map_svg import rate_colours, rate_map_svg
 from schorl.report.shown import Shown
-from schorl.report.words import areas_ha, product_words, shown_of, shortened, treated, what_to_do
+from schorl.report.words import areas_ha, product_words, shortened, shown_of, treated, what_to_do
+from schorl.report.zones_svg import rate_colours, rate_map_svg
 
 TEMPLATE = "job_sheet.typ"
 #: Letter size in points and height of the map in millimetres, from roomy to tight.
@@ -56,7 +56,7 @@ def _pages(facts: dict[str, Any]) -> int:
 
     said = json.dumps(facts, ensure_ascii=False, allow_nan=False, sort_keys=True)
     with as_file(files("schorl.report") / "fonts") as fonts:
-        found = typst.query(
+        found = typst.query(  # type: ignore[misc]
             template(TEMPLATE),
             "<pages>",
             field="value",

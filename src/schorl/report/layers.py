@@ -106,12 +106,12 @@ def _supporting(record: RunRecord, name: str) -> Layer | None:
     if surface is None or surface.constant:
         return None
     return _even(
-        name.replace("_", "-"),
-        "The soil",
-        name.replace("_", " ").capitalize(),
-        surface.unit,
         surface.estimate,
         scales.SUPPORTING,
+        key=name.replace("_", "-"),
+        name=name.replace("_", " ").capitalize(),
+        unit=surface.unit,
+        group="The soil",
     )
 
 
@@ -120,21 +120,28 @@ def _spread(record: RunRecord) -> Layer | None:
     if surface is None:
         return None
     note = "Standard deviation of the boron surface: how far the map itself may be off."
-    name = "Boron, standard deviation"
     return _even(
-        "boron-sd", "How sure", name, surface.unit, map_spread(surface), scales.UNSURE, note
+        map_spread(surface),
+        scales.UNSURE,
+        key="boron-sd",
+        name="Boron, standard deviation",
+        unit=surface.unit,
+        group="How sure",
+        note=note,
     )
 
 
-def _even(  # the same for all layers whose classes come from the values
-    key: str,
-    group: str,
-    name: str,
-    unit: str,
+def _even(
     values: Floats,
     colours: tuple[str, ...],
+    *,
+    key: str,
+    name: str,
+    unit: str,
+    group: str,
     note: str = "",
 ) -> Layer:
+    """A layer whose classes come from its own values."""
     scale = scales.even_scale(values, colours)
     return Layer(
         key=key,

@@ -5,7 +5,7 @@ Text is escaped unless it was built here: :class:`Safe` marks what was.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from html import escape
 
 #: Elements that have no end tag in HTML.
@@ -49,7 +49,7 @@ def tag(name: str, /, *children: object, **attributes: object) -> Safe:
     return Safe(f"<{' '.join(words)}>{join(children)}</{name}>")
 
 
-def shape(name: str, attributes: dict[str, object], *children: object) -> Safe:
+def shape(name: str, attributes: Mapping[str, object], *children: object) -> Safe:
     """An SVG element whose attribute names are given as they are (``viewBox``)."""
     words = [name]
     words += [f'{key}="{text(value)}"' for key, value in attributes.items() if value is not None]
@@ -61,12 +61,19 @@ def shape(name: str, attributes: dict[str, object], *children: object) -> Safe:
 def table(head: Iterable[object], rows: Iterable[Iterable[object]], *, caption: str) -> Safe:
     """A table with a caption for those who hear it; the first cell of a row is its head.
 
-    Columns of figures are told by their cells: those that start with a digit or a sign.
+    Columns of figures are told by their cells, those that start with a digit or a sign, and keep
+    to the right.
     """
-    heads = [tag("th", cell, scope="col") for cell in head]
+    held = [list(row) for row in rows]
+    figures = {
+        place for row in held for place, cell in enumerate(row) if place and _is_figure(cell)
+    }
+    heads = [
+        tag("th", cell, scope="col", class_="figure" if place in figures else None)
+        for place, cell in enumerate(head)
+    ]
     body = []
-    for row in rows:
-        first, *rest = list(row)
+    for first, *rest in held:
         cells = [tag("th", first, scope="row")]
         cells += [tag("td", cell, class_="figure" if _is_figure(cell) else None) for cell in rest]
         body.append(tag("tr", *cells))

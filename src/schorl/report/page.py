@@ -6,11 +6,13 @@ import base64
 import hashlib
 
 from schorl.model.record import RunRecord
+from schorl.report import sections_answer as answer
 from schorl.report import sections_rates as rates
 from schorl.report import sections_trust as trust
-from schorl.report.field_map import facts_script, field_map
+from schorl.report.field_map import field_map
 from schorl.report.figures import template
 from schorl.report.markup import Safe, join, tag
+from schorl.report.readings import facts_script
 from schorl.report.words import shown_of
 
 CONTENTS = (
@@ -44,19 +46,19 @@ def report_page(record: RunRecord) -> bytes:
         aria_labelledby="map-head",
     )
     body = [
-        rates.answer(record, shown),
-        rates.take_care(record),
+        answer.answer(record, shown),
+        answer.take_care(record, shown),
         map_part,
         rates.zone_section(record, shown),
         rates.ruled_section(record, shown),
         rates.outlook_section(record, shown),
         rates.value_section(record, shown),
         trust.surface_section(record, shown),
-        rates.machine_section(record, shown),
+        answer.machine_section(record, shown),
         trust.input_section(record, shown),
         trust.finding_section(record),
         trust.source_section(record),
-        rates.caution_section(record),
+        answer.caution_section(record),
     ]
     title = f"{record.settings.field_name}, {record.settings.season}: boron prescription"
     extra = facts_script(facts)

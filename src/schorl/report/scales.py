@@ -8,6 +8,7 @@ hatching carry the meaning where colour is lost.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -15,7 +16,7 @@ from schorl.model.arrays import Counts, Floats
 from schorl.report.shown import figure
 
 ABOUT_TARGET = ("#022a70", "#136697", "#80b2ca", "#ebe6e2", "#d7a081", "#b85c28", "#731406")
-ABOUT_TARGET_SIGNS = ("− − −", "− −", "−", "at target", "+", "+ +", "over the ceiling")
+ABOUT_TARGET_SIGNS = ("− − −", "− −", "−", "at target", "+", "+ +", "×")
 UNSURE = ("#eff0f1", "#a9b5ca", "#6e90c8", "#295a91", "#122d48")
 SUPPORTING = ("#f3db42", "#b5a86f", "#7d7c78", "#49536c", "#002b62")
 CHANGE = ("#731406", "#b85c28", "#d7a081", "#ebe6e2", "#80b2ca", "#136697", "#022a70")
@@ -94,9 +95,9 @@ def fixed_scale(breaks: tuple[float, ...], colours: tuple[str, ...], *, decimals
 
 
 def class_labels(breaks: tuple[float, ...], decimals: int) -> tuple[str, ...]:
-    """ "under a", "a to b", ..., "z and over"."""
+    """Labels from under the first break to the last break and over."""
     said = [figure(value, decimals) for value in breaks]
-    middle = [f"{a} to {b}" for a, b in zip(said, said[1:], strict=False)]
+    middle = [f"{a} to {b}" for a, b in pairwise(said)]
     return (f"under {said[0]}", *middle, f"{said[-1]} and over")
 
 

@@ -12,7 +12,7 @@ from schorl.model.samples import PROPERTY_UNITS
 from schorl.model.surface import Surface
 from schorl.report import charts
 from schorl.report.markup import Safe, join, table, tag
-from schorl.report.sections_rates import section
+from schorl.report.sections_answer import section
 from schorl.report.shown import Shown, figure, percent
 from schorl.report.words import PROPERTY, fit_words, verdict_words
 
@@ -114,11 +114,11 @@ def _assumptions(record: RunRecord) -> Safe:
 
 def _settings_table(record: RunRecord, shown: Shown) -> Safe:
     settings = record.settings
-    rows: list[list[object]] = [
-        ["season", tag("span", settings.season)],
-        ["placement", tag("span", str(settings.placement))],
-        ["seed", tag("span", str(settings.seed))],
-        ["units", tag("span", str(shown.system))],
+    rows = [
+        ("season", settings.season),
+        ("placement", str(settings.placement)),
+        ("seed", str(settings.seed)),
+        ("units shown", str(shown.system)),
     ]
     for group, value in (
         ("crop", settings.crop),
@@ -126,8 +126,12 @@ def _settings_table(record: RunRecord, shown: Shown) -> Safe:
         ("machine", settings.machine),
         ("zones", settings.zoning),
     ):
-        rows += [[f"{group}: {name}", tag("span", said)] for name, said in _plain_fields(value)]
-    return table(["Setting", "Value"], rows, caption="Every setting of this run")
+        rows += [
+            (name if name == group else f"{group}: {name}", said)
+            for name, said in _plain_fields(value)
+        ]
+    pairs = [tag("div", tag("dt", name), tag("dd", said)) for name, said in rows]
+    return tag("dl", *pairs, class_="settings")
 
 
 def _plain_fields(value: Any) -> list[tuple[str, str]]:
@@ -135,7 +139,7 @@ def _plain_fields(value: Any) -> list[tuple[str, str]]:
     said = []
     for one in fields(value):
         held = getattr(value, one.name)
-        if held is None or held == "" or held == () or held is False:
+        if held is None or held is False or held in ("", ()):
             continue
         name, unit = _name_and_unit(one.name)
         if isinstance(held, tuple):

@@ -30,6 +30,13 @@ RULED: Mapping[Limit, str] = {
     Limit.NOTHING: "nothing needed",
 }
 
+#: The same in one or two words where they alone would be unclear.
+SHORTLY: Mapping[Limit, str] = {
+    Limit.NEED: "what is needed",
+    Limit.NOTHING: "no need",
+    Limit.LEAST_WORTH: "too little to give",
+}
+
 PROPERTY = {"boron": "Boron", "organic_matter": "Organic matter", "clay": "Clay"}
 
 
@@ -61,7 +68,7 @@ def areas_ha(record: RunRecord) -> tuple[float, float]:
 
 
 def listed(words: Sequence[object]) -> str:
-    """ "1", "1 and 2", "1, 2 and 3"."""
+    """Words as in 1, 2 and 3."""
     said = [str(word) for word in words]
     return said[0] if len(said) == 1 else f"{', '.join(said[:-1])} and {said[-1]}" if said else ""
 
@@ -101,10 +108,13 @@ def _why_nothing(record: RunRecord) -> str:
 def outlook_words(record: RunRecord) -> str:
     """What is likely short before and after, and over after, as shares of the area."""
     look = record.prescription.field_outlook
+    said = f"As it is, {percent(look.short_before)} of the area is likely short of its target"
+    if not treated(record):
+        return f"{said}, and {percent(look.over_before)} over the soil ceiling."
     return (
-        f"As it is, {percent(look.short_before)} of the area is likely short of its target; after "
-        f"this pass {percent(look.short_after)}, and {percent(look.over_after)} over the soil "
-        "ceiling."
+        f"{said}. The next soil test shows only about 30 % of a dose: by it "
+        f"{percent(look.short_after)} would still read short, and if all of the dose stays, "
+        f"{percent(look.over_after)} would be over the soil ceiling."
     )
 
 
@@ -161,6 +171,18 @@ def fit_words(surface: Surface, shown: Shown) -> str:
     )
 
 
+def why_words(rate: ZoneRate, shown: Shown) -> str:
+    """Why a zone gets its rate; the reason of the rating itself where units are metric."""
+    if not shown.us:
+        return rate.why
+    return (
+        f"boron {figure(rate.boron_mean_mg_kg, 2)} ± {figure(rate.boron_sd_mg_kg, 2)} ppm against a "
+        f"target of {figure(rate.target_mg_kg, 2)}: the test asks for "
+        f"{shown.boron_rate(rate.need_kg_ha)}; given {shown.boron_rate_figure(rate.boron_kg_ha)}, "
+        f"held by {RULED[rate.ruled_by]}"
+    )
+
+
 def kind_words(kind: ZoneKind) -> str:
     """What sort of zone."""
     return {
@@ -200,12 +222,12 @@ def _wrapped(said: str) -> list[str]:
 
 
 def _zone_lines(record: RunRecord, shown: Shown) -> list[str]:
-    layout = "{:>4} {:>8} {:>12} {:>7} {:>13} {:>9} {:>7}  {}"
+    layout = "{:>4} {:>7} {:>11} {:>6} {:>11} {:>7} {:>6}  {}"
     unit = record.surfaces["boron"].unit if "boron" in record.surfaces else "mg/kg"
     lines = [
         layout.format("zone", "area", "boron", "target", "short", "rate", "boron", "held by"),
         layout.format(
-            "", shown.area_unit, unit, unit, "now → after", shown.rate_unit,
+            "", shown.area_unit, unit, unit, "now→after", shown.rate_unit,
             shown.boron_rate_unit, "",
         ),
     ]  # fmt: skip
@@ -220,7 +242,7 @@ def _zone_lines(record: RunRecord, shown: Shown) -> list[str]:
                 f"{100 * look.short_before:.0f} → {100 * look.short_after:.0f} %",
                 shown.rate_figure(rate.product_rate),
                 shown.boron_rate_figure(rate.boron_kg_ha),
-                str(rate.ruled_by),
+                SHORTLY.get(rate.ruled_by, str(rate.ruled_by)),
             ).rstrip()
         )
     return [line if len(line) <= WIDTH else shortened_end(line) for line in lines]
