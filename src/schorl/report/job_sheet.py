@@ -13,13 +13,22 @@ from schorl.model.record import RunRecord
 from schorl.model.settings import Placement
 from schorl.report.figures import engrave, template
 from schorl.report.machine_words import load_rows, point_rows, setting_rows
-from schorl.report.shown import Shown
+from schorl.report.shown import Shown, figure
 from schorl.report.words import areas_ha, product_words, shortened, shown_of, treated, what_to_do
 from schorl.report.zones_svg import rate_colours, rate_map_svg
 
 TEMPLATE = "job_sheet.typ"
 #: Letter size in points and height of the map in millimetres, from roomy to tight.
-DENSITIES = ((9.5, 112), (9.0, 100), (8.5, 88), (8.0, 74), (7.5, 60))
+DENSITIES = (
+    (10.5, 138),
+    (10.0, 122),
+    (9.5, 108),
+    (9.0, 96),
+    (8.5, 84),
+    (8.0, 70),
+    (7.5, 56),
+    (7.0, 48),
+)
 MOST_PAGES = 2
 MOST_WARNINGS = 6
 
@@ -98,6 +107,7 @@ def sheet_facts(record: RunRecord, names: Sequence[str]) -> dict[str, Any]:
         "settings": [list(row) for row in setting_rows(record, shown)],
         "loads": [list(row) for row in load_rows(record, shown)],
         "files": list(names),
+        "in_files": f"{record.prescription.unit}/ha" if shown.us else "",
         "file_unit": f"Rates in the files are in {record.prescription.unit}/ha.",
         "checks": list(CHECKS),
         "care": _care(record),
@@ -112,7 +122,7 @@ def sheet_facts(record: RunRecord, names: Sequence[str]) -> dict[str, Any]:
 
 
 def rate_rows(record: RunRecord, shown: Shown) -> list[list[str]]:
-    """Zones melted into rates: colour, rate, boron, zones, area, amount; highest first."""
+    """Zones melted into rates: colour, rate, boron, zones, area, amount, rate in the files."""
     prescription = record.prescription
     colours = rate_colours(prescription)
     rows = []
@@ -128,6 +138,7 @@ def rate_rows(record: RunRecord, shown: Shown) -> list[list[str]]:
                 ", ".join(str(one.zone) for one in same),
                 shown.area_figure(area),
                 shown.amount(area * product_rate) if product_rate else "shut off",
+                figure(product_rate, 2),
             ]
         )
     return rows

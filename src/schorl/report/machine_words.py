@@ -23,13 +23,17 @@ FIGURES: dict[str, tuple[str, str, str, float]] = {
 
 def point_rows(record: RunRecord, shown: Shown) -> list[list[str]]:
     """Rows "figure, lowest, mean, highest" for the rates of the plan; empty without a rate."""
-    points = record.prescription.machine.points
+    plan = record.prescription.machine
+    points = plan.points
     if not points:
         return []
     rows = [[f"Rate, {shown.rate_unit}", *(shown.rate_figure(p.product_rate) for p in points)]]
     names = dict.fromkeys(name for point in points for name in point.figures)
     for name in names:
         label, metric, us, factor = FIGURES.get(name, (name.replace("_", " "), "", "", 1.0))
+        run = plan.facts.get("calibration_m")
+        if name.startswith("catch") and isinstance(run, float | int):
+            label = f"Catch over {shown.length(run)}"
         unit, by = (us, factor) if shown.us else (metric, 1.0)
         values = [point.figures.get(name) for point in points]
         said = [figure(None if v is None else v / by, _decimals(v)) for v in values]
@@ -61,7 +65,8 @@ def setting_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
     if record.settings.product.form is Form.SPRAY:
         rows += _spray_rows(record, shown)
     for name, value in plan.facts.items():
-        rows.append(_fact(name, value, shown))
+        if name not in ("bags", "calibration_m"):
+            rows.append(_fact(name, value, shown))
     return rows
 
 
@@ -77,10 +82,8 @@ def _spray_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
 
 def _fact(name: str, value: float | str, shown: Shown) -> tuple[str, str]:
     label = {
-        "calibration_m": "Calibration run",
         "look_ahead_m": "Look ahead",
         "rate_change_m": "Way until a new rate holds",
-        "bags": "Bags to order",
     }.get(name, name.replace("_", " ").capitalize())
     if isinstance(value, str):
         return label, value
@@ -94,11 +97,17 @@ def load_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
     prescription, plan = record.prescription, record.prescription.machine
     rows = [("Product in all", shown.amount(prescription.product_total))]
     if plan.order > 0:
-        rows.append(("To order, spare included", shown.amount(plan.order)))
+        bags = plan.facts.get("bags")
+        said = f", {bags:g} bags" if isinstance(bags, float | int) else ""
+        rows.append(("To order, spare included", shown.amount(plan.order) + said))
     if plan.per_load > 0:
         rows.append(("One load holds", shown.amount(plan.per_load)))
         rows.append(("Loads", loads_words(plan.loads)))
     rows.append(("Boron in all", shown.boron(prescription.boron_kg)))
+    strength, mix = record.settings.product.boron_g_l, record.settings.machine.mix_g_b_l
+    if strength and mix and record.settings.product.form is Form.SPRAY:
+        rows.append(("Of it liquid product", shown.amount(1000 * prescription.boron_kg / strength)))
+        rows.append(("Liquid product in 100 parts of mix", f"{100 * mix / strength:.3g}"))
     return rows
 
 

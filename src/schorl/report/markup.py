@@ -83,7 +83,12 @@ def table(head: Iterable[object], rows: Iterable[Iterable[object]], *, caption: 
         tag("thead", tag("tr", *heads)),
         tag("tbody", *body),
     )
-    return tag("div", inner, class_="scroll", tabindex="0", role="region", aria_label=caption)
+    return scrolled(inner, caption)
+
+
+def scrolled(inner: Safe, name: str) -> Safe:
+    """A box that scrolls sideways where a table is too wide, reachable by keyboard."""
+    return tag("div", inner, class_="scroll", tabindex="0", role="region", aria_label=name)
 
 
 def _is_figure(cell: object) -> bool:

@@ -33,7 +33,7 @@ def answer(record: RunRecord, shown: Shown) -> Safe:
         (
             "Likely short",
             f"{percent(look.short_before)} → {percent(look.short_after)}",
-            f"of the area, before and after; {shown.area(doubt_ha)} doubtful",
+            f"of the area, now and by the next soil test; {shown.area(doubt_ha)} doubtful",
         ),
     ]
     boxes = [

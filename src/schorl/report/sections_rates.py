@@ -5,52 +5,59 @@ from __future__ import annotations
 from schorl.model.prescription import Limit, Outlook
 from schorl.model.record import RunRecord
 from schorl.report import charts, zones_svg
-from schorl.report.markup import Safe, join, table, tag
+from schorl.report.markup import Safe, join, scrolled, table, tag
 from schorl.report.sections_answer import section
 from schorl.report.shown import Shown, figure, percent
 from schorl.report.words import RULED, kind_words, why_words
 
 
 def zone_section(record: RunRecord, shown: Shown) -> Safe:
-    """One row a zone: boron on a shared axis, chances, rate, and why."""
+    """Two rows a zone: rate, boron on a shared axis, chances and soil; beneath them why."""
     axis = charts.boron_axis(record)
-    prescription = record.prescription
-    fills = zones_svg.rate_colours(prescription)
     head = [
-        "Zone", join([f"Boron, {_unit(record)}", charts.ladder_scale(axis)]),
-        f"Area, {shown.area_unit}", "Samples", "Mean ± SD", "Target", "Clay, %", "Organic matter, %",
-        "Short now → after", "Over after", f"Boron, {shown.boron_rate_unit}",
-        f"Rate, {shown.rate_unit}", "Why",
+        "Zone", f"Rate, {shown.rate_unit}", f"Boron, {shown.boron_rate_unit}",
+        f"Area, {shown.area_unit}", join([f"Boron, {_unit(record)}", charts.ladder_scale(axis)]),
+        "Mean ± SD", "Target", "Short now → after", "Over after", "Clay, %", "Organic matter, %",
+        "Samples",
     ]  # fmt: skip
-    rows = []
-    for place, rate in enumerate(prescription.rates):
-        look, zone = rate.outlook, prescription.zone_map.zones[place]
-        kind = "" if zone.kind == "zone" else tag("span", kind_words(zone.kind), class_="soft")
-        rows.append(
-            [
-                join([tag("b", rate.zone), " ", kind]),
-                charts.ladder(record, place, axis),
-                shown.area_figure(rate.area_ha),
-                str(rate.samples),
-                f"{figure(rate.boron_mean_mg_kg, 2)} ± {figure(rate.boron_sd_mg_kg, 2)}",
-                figure(rate.target_mg_kg, 2),
-                figure(rate.clay_pct, 0),
-                figure(rate.organic_matter_pct, 1),
-                f"{100 * look.short_before:.0f} → {percent(look.short_after)}",
-                percent(look.over_after),
-                shown.boron_rate_figure(rate.boron_kg_ha),
-                _rate_cell(shown.rate_figure(rate.product_rate), fills[rate.product_rate]),
-                tag("span", why_words(rate, shown), class_="why"),
-            ]
-        )
+    heads = [tag("th", cell, scope="col") for cell in head]
+    rows = [
+        row
+        for place in range(len(record.prescription.rates))
+        for row in _zone_rows(record, shown, place, axis)
+    ]
+    caption = "Zones and their rates"
+    made = tag(
+        "table", tag("caption", caption), tag("thead", tag("tr", *heads)), tag("tbody", *rows)
+    )
     key = (
         "Thick bar: where the mean of the zone lies, 9 times in 10. Thin line: where single places "
         "lie, 9 times in 10. Ticks: samples. Blue line: target. Dashed line: soil ceiling."
     )
-    return section(
-        "zones", "Zones and their rates", table(head, rows, caption="Zones and their rates"),
-        tag("p", key, class_="soft"), tag("p", prescription.zone_map.reason),
-    )  # fmt: skip
+    return section("zones", caption, scrolled(made, caption), tag("p", key, class_="soft"))
+
+
+def _zone_rows(record: RunRecord, shown: Shown, place: int, axis: charts.Axis) -> tuple[Safe, Safe]:
+    rate, zone = record.prescription.rates[place], record.prescription.zone_map.zones[place]
+    look, fills = rate.outlook, zones_svg.rate_colours(record.prescription)
+    kind = tag("span", kind_words(zone.kind), class_="soft") if zone.kind != "zone" else ""
+    cells = [
+        _rate_cell(shown.rate_figure(rate.product_rate), fills[rate.product_rate]),
+        shown.boron_rate_figure(rate.boron_kg_ha),
+        shown.area_figure(rate.area_ha),
+        charts.ladder(record, place, axis),
+        f"{figure(rate.boron_mean_mg_kg, 2)} ± {figure(rate.boron_sd_mg_kg, 2)}",
+        figure(rate.target_mg_kg, 2),
+        f"{100 * look.short_before:.0f} → {percent(look.short_after)}",
+        percent(look.over_after),
+        figure(rate.clay_pct, 0),
+        figure(rate.organic_matter_pct, 1),
+        str(rate.samples),
+    ]
+    first = tag("th", tag("b", rate.zone), " ", kind, scope="row", rowspan="2")
+    upper = tag("tr", first, *(tag("td", cell) for cell in cells), class_="upper")
+    lower = tag("tr", tag("td", why_words(rate, shown), colspan=str(len(cells)), class_="why"))
+    return upper, lower
 
 
 def _rate_cell(said: str, fill: str) -> Safe:

@@ -52,7 +52,9 @@ def product_words(record: RunRecord) -> str:
     if prescription.boron_pct is not None:
         return f"{name} ({prescription.boron_pct:g} % boron)"
     if prescription.boron_g_l is not None:
-        return f"{name} (as sprayed {prescription.boron_g_l:.3g} g boron a litre)"
+        strength = f"{prescription.boron_g_l:.3g} g boron a litre"
+        mixed = record.settings.machine.mix_g_b_l is not None
+        return f"tank mix of {name} ({strength})" if mixed else f"{name} ({strength})"
     return name
 
 

@@ -59,7 +59,7 @@
     const value = (name) => readings[name] && readings[name][cell];
     const unit = (name) => facts.units[name] || "";
     const zone = facts.zones[Number(value("zone"))];
-    const rows = [["Zone", `${zone.zone} (${zone.kind})`], ["Rate", `${zone.rate} (${zone.boron})`], ["Held by", zone.ruled], ["Why", zone.why]];
+    const rows = [["Zone", `${zone.zone} (${zone.kind})`], ["Rate", `${zone.rate} (${zone.boron})`], ["Held by", zone.ruled]];
     const boron = value("boron");
     if (boron) rows.push(["Boron", `${boron} ${unit("boron")}, 9 times in 10 between ${value("low")} and ${value("high")}`]);
     if (value("boron_sd")) rows.push(["Standard deviation of the map", `${value("boron_sd")} ${unit("boron")}`]);
@@ -72,6 +72,7 @@
     const near = nearestSample(at);
     if (near) rows.push(["Nearest sample", `${near.name}, ${Math.round(near.away * facts.metre)} ${facts.length} away, ${near.said}`]);
     rows.push(["Place", `east ${(facts.west + at[0]).toFixed(0)} m, north ${(facts.north - at[1]).toFixed(0)} m`]);
+    rows.push(["Why", zone.why]);
     return rows;
   }
 
@@ -93,7 +94,7 @@
       return row;
     }));
     // Only keys and taps are announced; a voice that follows the mouse would never stop.
-    if (speak) spoken.textContent = rows.slice(0, 5).map((row) => row.join(" ")).join(". ");
+    if (speak) spoken.textContent = rows.slice(0, 4).map((row) => row.join(" ")).join(". ");
   }
 
   // ---- view
