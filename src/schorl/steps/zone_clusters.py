@@ -8,6 +8,7 @@ import numpy as np
 
 from schorl.findings import Finding, finding
 from schorl.model.arrays import Flags, Floats
+from schorl.model.surface import Verdict
 from schorl.model.zones import CountFigure
 from schorl.steps.zone_land import Drawn, Land, count_figures, need_structure_p
 from schorl.zoning import reasons
@@ -24,12 +25,14 @@ from schorl.zoning.features import SOIL, Features, build_features
 from schorl.zoning.indices import index_table
 from schorl.zoning.loss import saving_range
 from schorl.zoning.plans import compact, savings_of
+from schorl.zoning.predicted import LeftOut, least_skill, left_out_means, need_skill
 from schorl.zoning.structure import GATE_P
 from schorl.zoning.zone_count import (
     GATE_SAVING,
     MOST_ZONES,
     choose_count,
     discrete_classes,
+    gate_open,
     sample_table,
 )
 
@@ -45,6 +48,7 @@ class _Case:
     maps: dict[int, ClusterMap]
     savings: dict[int, float]
     p: float
+    skill: float | None
     classes: int | None
     table: tuple[CountFigure, ...]
     findings: tuple[Finding, ...]
@@ -54,7 +58,8 @@ def clustered_zones(land: Land) -> Drawn:
     """Zones from clusters if the gate opens or a number was asked for, else one flat rate."""
     case = _case(land)
     asked = land.zoning.count
-    wanted = asked or choose_count(case.savings, case.p, case.classes, gate_p=GATE_P)
+    open_ = gate_open(case.savings, case.p, predicts=_predicts(land, case))
+    wanted = asked or (choose_count(case.savings, case.classes) if open_ else 1)
     if wanted not in case.maps:
         return _flat(land, case, best=max(case.savings.values()))
     shares = shares_of(case.features.table, case.maps[wanted].centres, land.use)
@@ -89,6 +94,7 @@ def _case(land: Land) -> _Case:
         maps=maps,
         savings=savings,
         p=need_structure_p(land),
+        skill=sample_skill(land),
         classes=sample_classes(land),
         table=count_figures(land, savings, indices),
         findings=tuple(
@@ -112,6 +118,28 @@ def sample_classes(land: Land) -> int | None:
     return discrete_classes(sample_table(columns, seed=land.seed), seed=land.seed)
 
 
+def sample_skill(land: Land) -> float | None:
+    """Leave-one-out skill of the need at the samples in use; None where nothing can tell it."""
+    samples, free = land.samples, land.samples_in_use()
+    told = []
+    for name in SOIL:
+        surface, measured = land.surfaces.get(name), samples.properties.get(name)
+        if surface is None or surface.constant or measured is None or surface.quality is None:
+            continue
+        known = measured.known
+        predicted = np.full(len(samples), np.nan)
+        flat = surface.verdict is Verdict.NONE
+        predicted[known] = (
+            left_out_means(measured.values[known]) if flat else surface.quality.predicted
+        )
+        told.append(LeftOut(observed=measured.values[free], predicted=predicted[free]))
+    return need_skill(land.sample_need_kg_ha[free], told)
+
+
+def _predicts(land: Land, case: _Case) -> bool:
+    return case.skill is None or case.skill >= least_skill(int(land.samples_in_use().sum()))
+
+
 def _mostly_told(below: Flags) -> bool:
     return bool(len(below)) and float(below.mean()) <= MOST_BELOW
 
@@ -129,7 +157,7 @@ def _flat(land: Land, case: _Case, *, best: float) -> Drawn:
             best=best,
             samples=int(land.samples_in_use().sum()),
             test="pattern",
-            gate_p=GATE_P,
+            skill=None if _predicts(land, case) else case.skill,
         ),
         structure_p=case.p,
         classes=case.classes,

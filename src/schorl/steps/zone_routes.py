@@ -135,7 +135,6 @@ def sampled_zones(land: Land) -> Drawn:
             best=saving,
             samples=count,
             test="difference between the sample zones",
-            gate_p=GATE_P,
         )
         return Drawn(origin="one flat rate", reason=reason, structure_p=p, table=table)
     return Drawn(

@@ -181,8 +181,9 @@ def _zone_map(land: Land, drawn: Drawn, cover: Cover) -> ZoneMap:
         )
         for label, number in zip(order, numbers, strict=True)
     )
-    in_zones = land.use & (by_label >= 0)
-    narrow = narrow_share(labels, in_zones, land.travel, land.ground)
+    narrow = narrow_share(
+        [cover.areas[label] for label in order if label >= 0], land.travel, land.ground
+    )
     zone_ha = sum(zone.area_ha for zone in zones if zone.kind is ZoneKind.ZONE)
     doubt, sureness = _sureness(drawn, order, by_label)
     return ZoneMap(

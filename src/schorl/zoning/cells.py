@@ -6,11 +6,13 @@ from collections.abc import Sequence
 
 import numpy as np
 import shapely
+from affine import Affine
 
-from schorl.model.arrays import Counts, Flags
+from schorl.model.arrays import Counts
 from schorl.model.field import Area, CellGrid
+from schorl.zoning.regions import Labels
 from schorl.zoning.travel import Ground, TravelGrid
-from schorl.zoning.workable import domain_of, filled, kernel_of, opened
+from schorl.zoning.workable import domain_of, filled, least_kernel_of, opened
 
 
 def cells_in(areas: Sequence[Area], grid: CellGrid) -> Counts:
@@ -18,15 +20,10 @@ def cells_in(areas: Sequence[Area], grid: CellGrid) -> Counts:
 
     A centre outside all of them (cells of a field too narrow for a centre) takes the nearest.
     """
-    from affine import Affine
-    from rasterio.features import rasterize
-
-    burned = rasterize(
-        [(area, place) for place, area in enumerate(areas)],
-        out_shape=grid.inside.shape,
-        fill=-1,
-        transform=Affine(grid.cell_m, 0.0, grid.west_m, 0.0, -grid.cell_m, grid.north_m),
-        dtype="int32",
+    burned = _burned(
+        areas,
+        grid.inside.shape,
+        Affine(grid.cell_m, 0.0, grid.west_m, 0.0, -grid.cell_m, grid.north_m),
     )
     labels: Counts = burned[grid.inside].astype(np.intp)
     lost = labels < 0
@@ -36,16 +33,38 @@ def cells_in(areas: Sequence[Area], grid: CellGrid) -> Counts:
     return labels
 
 
-def narrow_share(labels: Counts, use: Flags, travel: TravelGrid, ground: Ground) -> float:
-    """Share of the used cells that lie in no rectangle of their own zone, 0 to 1.
+def narrow_share(areas: Sequence[Area], travel: TravelGrid, ground: Ground) -> float:
+    """Share of some zones' ground that lies in no rectangle of its own zone, 0 to 1.
 
-    ``labels`` and ``use`` have shape ``(n_cells,)``. Ground outside the field next to a zone counts
-    as its own up to half a rectangle, since a pass may reach over the edge.
+    The finished outlines are drawn on the travel grid afresh. Ground outside the zones counts as
+    the nearest zone's up to half a rectangle, since a pass may reach over the edge. The rectangle
+    is that of whole cells at most as large as the machine's.
     """
-    inside = travel.flags(use)
+    turned = [shapely.transform(area, lambda points: points @ travel.axes.T) for area in areas]
+    # Rasters have x along columns: here columns run along travel and rows across it.
+    swapped = [shapely.transform(area, lambda points: points[:, ::-1]) for area in turned]
+    raster = _burned(
+        swapped,
+        travel.source.shape,
+        Affine(travel.cell_m, 0.0, travel.along0_m, 0.0, travel.cell_m, travel.across0_m),
+    ).astype(np.int16)
+    inside = raster >= 0
     if not inside.any():
         return 0.0
-    raster = np.where(inside, labels[np.maximum(travel.source, 0)], -1).astype(np.int16)
-    kernel = kernel_of(ground, travel.cell_m)
+    kernel = least_kernel_of(ground, travel.cell_m)
     fits = opened(filled(raster, domain_of(inside, kernel)), kernel)
     return 1.0 - float((fits & inside).sum() / inside.sum())
+
+
+def _burned(areas: Sequence[Area], shape: tuple[int, ...], transform: Affine) -> Labels:
+    """Position of the area under each cell's centre, -1 in none."""
+    from rasterio.features import rasterize
+
+    burned: Labels = rasterize(
+        [(area, place) for place, area in enumerate(areas)],
+        out_shape=shape,
+        fill=-1,
+        transform=transform,
+        dtype="int32",
+    )
+    return burned

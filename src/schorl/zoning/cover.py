@@ -187,7 +187,7 @@ def _simplified(areas: dict[int, Area], tolerance_m: float) -> dict[int, Area]:
     fresh = shapely.coverage_simplify(
         [areas[label] for label in zones], tolerance_m, simplify_boundary=False
     )
-    return {**areas, **dict(zip(zones, cast("list[Area]", list(fresh)), strict=True))}
+    return {**areas, **dict(zip(zones, fresh, strict=True))}
 
 
 def cover_faults(areas: Sequence[Area], boundary: Area) -> tuple[str, ...]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from schorl.zoning.structure import GATE_P
 from schorl.zoning.zone_count import GATE_SAVING
 
 #: Below this number of samples a missing pattern is no evidence of a uniform field.
@@ -27,10 +28,13 @@ def between(low: float, high: float) -> str:
 
 
 def flat_reason(
-    *, p: float | None, best: float, samples: int, test: str, gate_p: float = 0.10
+    *, p: float, best: float, samples: int, test: str, skill: float | None = None
 ) -> str:
-    """Why one flat rate: no pattern in the need, or nothing gained by zones."""
-    if p is not None and p > gate_p:
+    """Why one flat rate: no pattern in the need, no map that predicts it, or nothing gained.
+
+    ``skill`` is given where it was too low.
+    """
+    if p > GATE_P:
         sentence = (
             f"One flat rate: the boron need at the {samples} samples shows no {test} that chance "
             f"would not show as well (p = {p:.2f})."
@@ -41,6 +45,12 @@ def flat_reason(
                 "that zones cannot be told from them."
             )
         return sentence
+    if skill is not None:
+        return (
+            "One flat rate: the maps do not predict the boron need where a sample is left out "
+            f"(they explain {percent(max(skill, 0.0))} of its differences), so zones drawn from "
+            "them cannot be trusted."
+        )
     return (
         f"One flat rate: after all limits and machine steps the best zones would save "
         f"{percent(max(best, 0.0))} of the expected loss; below {percent(GATE_SAVING)} zones are "

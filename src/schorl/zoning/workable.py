@@ -52,6 +52,13 @@ def kernel_of(ground: Ground, cell_m: float) -> Kernel:
     return Kernel(across, along)
 
 
+def least_kernel_of(ground: Ground, cell_m: float) -> Kernel:
+    """Rectangle of whole cells that is not larger than the ground: to judge, not to draw."""
+    return Kernel(
+        max(int(ground.width_m / cell_m + 1e-6), 1), max(int(ground.run_m / cell_m + 1e-6), 1)
+    )
+
+
 def smoothed(shares: Layers, travel: TravelGrid, use: Flags, *, sigma_m: float) -> Layers:
     """Memberships ``(n_cells, k)`` smoothed on the travel grid, shape ``(k, rows, cols)``.
 

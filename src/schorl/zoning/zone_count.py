@@ -12,6 +12,7 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 
 from schorl.model.arrays import Floats
+from schorl.zoning.structure import GATE_P
 
 MOST_ZONES = 5
 #: The least share of the flat rate's expected loss that zones must save.
@@ -24,7 +25,7 @@ ENTROPY_ABOVE = 150
 SKEWED = 1.0
 OUTLIER_MADS = 3.5
 MAD_TO_SD = 1.4826
-MIXTURE_STARTS = 5
+MIXTURE_STARTS = 3
 
 
 def sample_table(columns: Sequence[Floats], *, seed: int) -> Floats:
@@ -101,18 +102,21 @@ def enough_zones(savings: Mapping[int, float]) -> int:
     return min(count for count, saving in savings.items() if saving >= ENOUGH * best)
 
 
-def choose_count(
-    savings: Mapping[int, float], p: float | None, classes: int | None, *, gate_p: float
-) -> int:
-    """Number of zones by the gate and the count; 1 is one flat rate.
+def gate_open(savings: Mapping[int, float], p: float, *, predicts: bool = True) -> bool:
+    """Whether zones are worth drawing.
 
-    Zones only where the need is structured (p at most ``gate_p``) and the best map saves at least
-    8 %; as many as there are discrete classes where that number passes too, else the smallest
-    number that saves enough.
+    The need is structured (p at most 0.10), the maps predict it at left-out samples, and the best
+    map saves at least 8 % of the flat rate's expected loss.
     """
-    best = max(savings.values(), default=0.0)
-    if p is None or p > gate_p or best < GATE_SAVING:
-        return 1
+    return p <= GATE_P and predicts and max(savings.values(), default=0.0) >= GATE_SAVING
+
+
+def choose_count(savings: Mapping[int, float], classes: int | None) -> int:
+    """Number of zones once the gate is open.
+
+    As many as there are discrete classes where that number saves enough too, else the smallest
+    number with 85 % of the best saving.
+    """
     if classes is not None and classes > 1 and savings.get(classes, 0.0) >= GATE_SAVING:
         return classes
     return enough_zones({count: saving for count, saving in savings.items() if count > 1})
