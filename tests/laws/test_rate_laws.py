@@ -1,0 +1,193 @@
+"""Laws of the dose: no option, soil or machine may cross them."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from schorl.agronomy.caps import (
+    ABSOLUTE_ALFALFA_KG_HA,
+    ABSOLUTE_PASS_KG_HA,
+    ABSOLUTE_SEASON_KG_HA,
+    absolute_limit_kg_ha,
+    rate_cap,
+)
+from schorl.agronomy.chances import chance_over_ceiling
+from schorl.agronomy.crops import crop_named
+from schorl.agronomy.tables import limit, table
+from schorl.intake.quantities import FACTORS
+from schorl.machinery.rates import boron_per_unit, machine_rate
+from schorl.model.prescription import CellNeed
+from schorl.model.settings import (
+    CropSettings,
+    Form,
+    Machine,
+    Override,
+    Placement,
+    Product,
+    RunSettings,
+)
+from schorl.steps.zone_rates import best_rate_kg_ha, plan_outcome, ruled_rate, unevenness_of
+
+CROPS = st.sampled_from([row["id"] for row in table("crops")])
+CASES = settings(max_examples=1000, deadline=None)
+
+
+@st.composite
+def soils(draw):
+    """Cells of a zone with any boron, target, mass and cap."""
+    count = draw(st.integers(1, 6))
+    cells = np.ones(count)
+    log = draw(st.booleans())
+    boron = np.array(draw(st.lists(st.floats(0.02, 4.0), min_size=count, max_size=count)))
+    target, ceiling = draw(st.floats(0.2, 1.7)), draw(st.floats(1.4, 3.5))
+    mass, top = draw(st.floats(1.0, 3.4)), draw(st.floats(0.8, 1.7))
+    spread = draw(st.floats(0.0, 0.6))
+    location = np.log(boron) - 0.5 * spread**2 if log else boron
+    return CellNeed(
+        need_mean_kg_ha=(target - boron) * mass,
+        need_sd_kg_ha=spread * mass * cells,
+        boron_mg_kg=boron,
+        boron_location=location,
+        boron_sd=spread * cells,
+        boron_log=log,
+        target_mg_kg=target * cells,
+        ceiling_mg_kg=ceiling * cells,
+        mass_need=mass * cells,
+        mass_ceiling=top * cells,
+        rate_cap_kg_ha=draw(st.floats(0.0, 3.36)) * cells,
+        hot=np.zeros(count, bool),
+    )
+
+
+@st.composite
+def jobs(draw):
+    """Settings with any machine and product."""
+    step = draw(st.one_of(st.none(), st.floats(0.1, 5.0)))
+    machine = Machine(
+        spread_cv_pct=draw(st.floats(0, 20)),
+        step=step,
+        least_rate=draw(st.one_of(st.none(), st.floats(0.0, 20.0))),
+        most_rate=draw(st.one_of(st.none(), st.floats(0.5, 60.0))),
+    )
+    return RunSettings(
+        field_name="f",
+        season="s",
+        crop=CropSettings(crop="sugar beet", cost_ratio=draw(st.floats(0.2, 4.0))),
+        product=Product(form=Form.GRANULE, boron_pct=draw(st.floats(0.5, 21.0))),
+        placement=draw(st.sampled_from([Placement.BROADCAST, Placement.FOLIAR])),
+        machine=machine,
+    )
+
+
+@given(soils(), jobs())
+@CASES
+def test_never_above_cap_chance_or_absolute_limit(cells, job):
+    rate = ruled_rate(cells, job).boron_kg_ha
+    assert 0 <= rate <= ABSOLUTE_PASS_KG_HA + 1e-12
+    assert rate <= cells.rate_cap_kg_ha.min() + 1e-12
+    if rate > 0:
+        over = chance_over_ceiling(cells, rate, unevenness=unevenness_of(job)).mean()
+        assert over <= limit("chance-of-excess") + 1e-9
+
+
+@given(soils(), jobs(), st.floats(0.0, 1.5))
+@CASES
+def test_more_boron_in_the_soil_never_raises_a_rate(cells, job, more):
+    shift = np.log1p(more / cells.boron_mg_kg) if cells.boron_log else more
+    richer = replace(
+        cells,
+        boron_mg_kg=cells.boron_mg_kg + more,
+        boron_location=cells.boron_location + shift,
+        need_mean_kg_ha=cells.need_mean_kg_ha - more * cells.mass_need,
+    )
+    assert ruled_rate(richer, job).boron_kg_ha <= ruled_rate(cells, job).boron_kg_ha + 1e-7
+
+
+@given(soils(), jobs())
+@CASES
+def test_nothing_at_or_above_the_ceiling(cells, job):
+    at = np.full(len(cells.hot), float(cells.ceiling_mg_kg[0]))
+    location = np.log(at) - 0.5 * cells.boron_sd**2 if cells.boron_log else at
+    full = replace(
+        cells, boron_mg_kg=at, boron_location=location,
+        need_mean_kg_ha=(cells.target_mg_kg - at) * cells.mass_need,
+    )  # fmt: skip
+    assert ruled_rate(full, job).boron_kg_ha == 0.0
+
+
+@given(st.floats(0, 5), jobs())
+@CASES
+def test_a_machine_never_gives_more_than_was_wanted(wanted, job):
+    given_rate = float(machine_rate(wanted, job.product, job.machine))
+    assert 0 <= given_rate <= wanted + 1e-12
+    if job.machine.most_rate is not None:
+        most = job.machine.most_rate * boron_per_unit(job.product)
+        assert given_rate <= most + 1e-12
+    product = given_rate / boron_per_unit(job.product)
+    assert given_rate == 0 or product >= (job.machine.least_rate or 0) - 1e-6
+
+
+@given(CROPS, st.sampled_from(list(Placement)), st.floats(0, 50), st.sampled_from(["", "A. Name"]))
+@CASES
+def test_no_override_passes_the_absolute_limit(crop_name, placement, value, person):
+    crop = crop_named(crop_name)
+    overrides = tuple(
+        Override(what=what, value=value, unit="kg/ha", person=person)
+        for what in ("rate cap", "band cap", "alfalfa season limit")
+    )
+    most = absolute_limit_kg_ha(crop, overrides)
+    assert most <= ABSOLUTE_ALFALFA_KG_HA
+    if crop.name != "alfalfa (lucerne)" or not person:
+        assert most == ABSOLUTE_SEASON_KG_HA
+    cap = rate_cap(crop, placement, overrides)
+    assert cap.kg_ha <= most
+    if placement is Placement.SEED_ROW:
+        assert cap.kg_ha == 0
+    if not person:
+        assert cap == rate_cap(crop, placement)
+
+
+@given(soils(), jobs())
+@CASES
+def test_a_dearer_shortage_never_lowers_the_need(cells, job):
+    low = best_rate_kg_ha(cells, cost_ratio=job.crop.cost_ratio)
+    assert best_rate_kg_ha(cells, cost_ratio=job.crop.cost_ratio * 2) >= low - 1e-9
+
+
+@given(soils(), jobs())
+@CASES
+def test_the_best_rate_has_the_least_expected_loss(cells, job):
+    from schorl.agronomy.chances import expected_loss_kg_ha
+
+    ratio = job.crop.cost_ratio
+    best = best_rate_kg_ha(cells, cost_ratio=ratio)
+    least = expected_loss_kg_ha(cells, best, cost_ratio=ratio).sum()
+    for other in (0.0, best * 0.8, best * 1.2 + 0.05):
+        loss = expected_loss_kg_ha(cells, other, cost_ratio=ratio).sum()
+        assert loss >= least - 1e-6 * max(1.0, least)
+
+
+@given(soils(), jobs())
+@settings(max_examples=200, deadline=None)
+def test_a_plan_is_the_sum_of_its_zones(cells, job):
+    labels = np.arange(len(cells.hot)) % 2
+    outcome = plan_outcome(labels, cells, job, cell_ha=0.01)
+    assert outcome.loss_kg >= 0
+    assert (outcome.rates_kg_ha <= cells.rate_cap_kg_ha.min() + 1e-12).all()
+
+
+@given(st.floats(0.01, 10))
+@CASES
+def test_the_same_soil_in_five_units(mg_kg):
+    factors = FACTORS["boron"]
+    printed = {
+        "mg/kg": mg_kg, "ug/kg": mg_kg * 1e3, "g/kg": mg_kg / 1e3, "mg/100g": mg_kg / 10,
+        "lb/acre": mg_kg * 2.0, "kg/ha": mg_kg * 2.24,
+    }  # fmt: skip
+    for unit, value in printed.items():
+        assert value * factors[unit] == pytest.approx(mg_kg, rel=1e-9)

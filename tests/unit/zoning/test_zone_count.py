@@ -1,0 +1,111 @@
+"""The gate and the number of zones."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from schorl.zoning.predicted import LeftOut, least_skill, left_out_means, need_skill
+from schorl.zoning.zone_count import (
+    choose_count,
+    discrete_classes,
+    enough_zones,
+    gate_open,
+    sample_table,
+)
+
+GOOD = {1: 0.0, 2: 0.20, 3: 0.27, 4: 0.30, 5: 0.31}
+
+
+@pytest.mark.parametrize(
+    ("savings", "p", "predicts", "is_open"),
+    [
+        (GOOD, 0.002, True, True),
+        (GOOD, 0.10, True, True),
+        (GOOD, 0.102, True, False),  # no pattern in the need
+        (GOOD, 0.002, False, False),  # maps that do not predict
+        ({1: 0.0, 2: 0.05, 3: 0.079}, 0.002, True, False),  # nothing gained
+        ({1: 0.0, 2: 0.05, 3: 0.08}, 0.002, True, True),
+        ({1: 0.0}, 0.002, True, False),  # no map at all
+    ],
+)
+def test_the_gate_needs_pattern_prediction_and_saving(savings, p, predicts, is_open):
+    assert gate_open(savings, p, predicts=predicts) is is_open
+
+
+def test_without_classes_the_least_number_with_85_percent_of_the_best_saving():
+    assert enough_zones(GOOD) == 3  # 0.27 >= 0.85 x 0.31 = 0.2635 > 0.20
+    assert choose_count(GOOD, 1) == 3
+    assert choose_count(GOOD, None) == 3
+
+
+def test_discrete_classes_decide_where_their_number_saves_enough():
+    assert choose_count(GOOD, 2) == 2
+    assert choose_count({**GOOD, 2: 0.07}, 2) == 3
+
+
+def blobs(n: int, apart: float, classes: int, seed: int = 4):
+    random = np.random.default_rng(seed)
+    which = np.arange(n) % classes
+    return random.normal(size=(n, 3)) + apart * np.column_stack([which, -which, 0 * which])
+
+
+def test_well_separated_classes_are_counted_and_a_cloud_is_one():
+    assert discrete_classes(blobs(60, 4.0, 3), seed=0) == 3
+    assert discrete_classes(blobs(60, 0.0, 1), seed=0) == 1
+
+
+def test_bic_is_that_of_the_formula():
+    """p = kd + d(d+1)/2 + k - 1 free figures for one shared covariance."""
+    from sklearn.mixture import GaussianMixture
+
+    table = blobs(60, 4.0, 2)
+    mixture = GaussianMixture(2, covariance_type="tied", random_state=0).fit(table)
+    figures = 2 * 3 + 3 * 4 // 2 + 1
+    by_hand = -2.0 * mixture.score(table) * len(table) + figures * np.log(len(table))
+    assert mixture.bic(table) == pytest.approx(by_hand)
+
+
+def test_few_samples_or_none_say_nothing():
+    assert discrete_classes(blobs(14, 4.0, 2), seed=0) is None
+    assert discrete_classes(np.empty((60, 0)), seed=0) is None
+
+
+def test_rounded_values_do_not_become_classes():
+    random = np.random.default_rng(5)
+    rounded = np.round(random.normal(0.6, 0.12, 60), 1)
+    table = sample_table([rounded, random.normal(20, 3, 60)], seed=0)
+    assert discrete_classes(table, seed=0) == 1
+
+
+def test_skewed_columns_and_outliers_do_not_become_classes():
+    random = np.random.default_rng(6)
+    skewed = random.lognormal(0.0, 0.8, 60)
+    wild = random.normal(20.0, 3.0, 60)
+    wild[:2] = 80.0
+    table = sample_table([skewed, wild], seed=0)
+    assert discrete_classes(table, seed=0) == 1
+
+
+def test_incomplete_samples_and_constant_columns_are_dropped():
+    columns = [np.array([1.0, 2.0, np.nan, 4.0]), np.array([3.0, 3.0, 3.0, 3.0])]
+    assert sample_table(columns, seed=0).shape == (3, 1)
+
+
+def test_skill_is_one_for_perfect_and_nothing_for_left_out_means():
+    random = np.random.default_rng(1)
+    boron, clay = random.normal(0.6, 0.1, 50), random.normal(22, 3, 50)
+    need = 2.6 * (0.8 + 0.01 * (clay - 22) - boron)
+    perfect = [LeftOut(observed=boron, predicted=boron), LeftOut(observed=clay, predicted=clay)]
+    assert need_skill(need, perfect) == pytest.approx(1.0)
+    mean = [
+        LeftOut(observed=boron, predicted=left_out_means(boron)),
+        LeftOut(observed=clay, predicted=left_out_means(clay)),
+    ]
+    assert need_skill(need, mean) == pytest.approx(0.0, abs=1e-12)
+    assert need_skill(need, []) is None
+
+
+def test_fewer_samples_must_show_more_skill():
+    assert least_skill(60) == pytest.approx(0.10)
+    assert least_skill(30) == pytest.approx(0.1414, abs=1e-4)
+    assert least_skill(240) == pytest.approx(0.05)
