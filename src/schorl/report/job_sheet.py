@@ -9,6 +9,7 @@ from typing import Any
 
 from schorl.agronomy.cautions import cautions
 from schorl.findings import Severity
+from schorl.model.prescription import ZoneRate
 from schorl.model.record import RunRecord
 from schorl.model.settings import Placement
 from schorl.report.figures import engrave, template
@@ -31,6 +32,7 @@ DENSITIES = (
 )
 MOST_PAGES = 2
 MOST_WARNINGS = 6
+MOST_RATES = 16
 
 CHECKS = (
     "The field, the season and the file named here are the ones the controller shows.",
@@ -54,7 +56,7 @@ def job_sheet(record: RunRecord, *, files: Sequence[str]) -> bytes:
     """
     facts = sheet_facts(record, files)
     for size, map_mm in DENSITIES:
-        facts |= {"size": size, "map_mm": map_mm}
+        facts |= {"size": size, "map_mm": map_mm, "tight": size < 9}
         if _pages(facts) <= MOST_PAGES:
             break
     return engrave(TEMPLATE, facts, kind="pdf")
@@ -83,7 +85,7 @@ def sheet_facts(record: RunRecord, names: Sequence[str]) -> dict[str, Any]:
     made = "" if settings.made_on is None else settings.made_on.isoformat()
     fed_ha, left_ha = areas_ha(record)
     return {
-        "field": settings.field_name,
+        "field": shortened(settings.field_name, 70),
         "season": settings.season,
         "crop": settings.crop.crop,
         "area": shown.area(record.field.area_ha),
@@ -112,7 +114,7 @@ def sheet_facts(record: RunRecord, names: Sequence[str]) -> dict[str, Any]:
         "checks": list(CHECKS),
         "care": _care(record),
         "cautions": list(cautions(foliar=settings.placement is Placement.FOLIAR)),
-        "notes": list(record.prescription.machine.advice),
+        "notes": [shortened(one, 200) for one in record.prescription.machine.advice[:5]],
         "overrides": [
             f"{one.what} set to {one.value:g} {one.unit} by {one.person}"
             for one in settings.overrides
@@ -122,32 +124,45 @@ def sheet_facts(record: RunRecord, names: Sequence[str]) -> dict[str, Any]:
 
 
 def rate_rows(record: RunRecord, shown: Shown) -> list[list[str]]:
-    """Zones melted into rates: colour, rate, boron, zones, area, amount, rate in the files."""
-    prescription = record.prescription
-    colours = rate_colours(prescription)
-    rows = []
-    for product_rate in sorted({one.product_rate for one in prescription.rates}, reverse=True):
-        same = [one for one in prescription.rates if one.product_rate == product_rate]
-        area = sum(one.area_ha for one in same)
-        boron = sum(one.area_ha * one.boron_kg_ha for one in same) / area if area else 0.0
-        rows.append(
-            [
-                colours[product_rate],
-                shown.rate_figure(product_rate) if product_rate else "0",
-                shown.boron_rate_figure(boron),
-                ", ".join(str(one.zone) for one in same),
-                shown.area_figure(area),
-                shown.amount(area * product_rate) if product_rate else "shut off",
-                figure(product_rate, 2),
-            ]
-        )
+    """Zones melted into rates: colour, rate, boron, zones, area, amount, rate in the files.
+
+    Highest first. Beyond a page's worth, the rates of the smallest areas share one row, so that
+    the sums still hold; all of them stand on the map.
+    """
+    colours = rate_colours(record.prescription)
+    by_rate: dict[float, list[ZoneRate]] = {}
+    for one in record.prescription.rates:
+        by_rate.setdefault(one.product_rate, []).append(one)
+    largest = sorted(by_rate, key=lambda rate: -sum(one.area_ha for one in by_rate[rate]))
+    listed, rest = sorted(largest[:MOST_RATES], reverse=True), sorted(largest[MOST_RATES:])
+    rows = [_rate_row(colours[rate], [rate], by_rate[rate], shown) for rate in listed]
+    if rest:
+        together = [one for rate in rest for one in by_rate[rate]]
+        rows.append(_rate_row("#ffffff", rest, together, shown))
     return rows
+
+
+def _rate_row(colour: str, rates: list[float], zones: list[ZoneRate], shown: Shown) -> list[str]:
+    area = sum(one.area_ha for one in zones)
+    boron = sum(one.area_ha * one.boron_kg_ha for one in zones) / area if area else 0.0
+    amount = sum(one.area_ha * one.product_rate for one in zones)
+    low, high = rates[0], rates[-1]
+    said = shown.rate_figure(low) if low else "0"
+    return [
+        colour,
+        said if low == high else f"{said} to {shown.rate_figure(high)}",
+        shown.boron_rate_figure(boron),
+        ", ".join(str(one.zone) for one in zones),
+        shown.area_figure(area),
+        shown.amount(amount) if amount else "shut off",
+        figure(low, 2) if low == high else f"{figure(low, 2)} to {figure(high, 2)}",
+    ]
 
 
 def _care(record: RunRecord) -> list[str]:
     """The warnings of the run, the first few in full."""
     warned = [one for one in record.findings if one.severity is not Severity.NOTE]
-    said = [shortened(f"{one.where}: {one.what}", 180) for one in warned[:MOST_WARNINGS]]
+    said = [shortened(f"{one.where}: {one.what}", 160) for one in warned[:MOST_WARNINGS]]
     if len(warned) > MOST_WARNINGS:
         said.append(f"{len(warned) - MOST_WARNINGS} more in the report")
     if not treated(record):

@@ -27,7 +27,7 @@ def text(value: object) -> Safe:
 
 def join(parts: Iterable[object], between: str = "") -> Safe:
     """Escaped parts one after the other."""
-    return Safe(between.join(text(part) for part in parts))
+    return Safe(text(between).join(text(part) for part in parts))
 
 
 def tag(name: str, /, *children: object, **attributes: object) -> Safe:

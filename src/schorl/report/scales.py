@@ -64,7 +64,7 @@ def luminance(colour: str) -> float:
 def ink_on(colour: str) -> str:
     """Black or white, whichever stands out more on a colour."""
     light = luminance(colour) + 0.05
-    return "#ffffff" if 1.05 / light > light / 0.05 else "#111111"
+    return "#ffffff" if 1.05 / light > light / 0.05 else "#000000"
 
 
 def round_step(span: float) -> float:

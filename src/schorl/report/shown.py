@@ -103,9 +103,9 @@ class Shown:
         return per_ha / factor
 
     def rate_figure(self, per_ha: float) -> str:
-        """A rate of product without its unit."""
+        """A rate of product without its unit: as exact as the files, two decimals where needed."""
         value = self.rate_value(per_ha)
-        return figure(value, 2 if 0 < value < 10 and self.us else 1)
+        return figure(value, 2 if self.us or abs(round(value, 1) - value) >= 0.005 else 1)
 
     def rate(self, per_ha: float) -> str:
         """A rate of product with its unit."""

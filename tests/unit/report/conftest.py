@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from support.example_record import example_record
 
 

@@ -67,9 +67,7 @@ def test_the_closing_table_fits_80_columns(record, change):
 
 def test_a_long_field_name_and_many_findings_still_fit(record):
     settings = replace(record.settings, field_name="Long " * 30)
-    found = tuple(
-        finding("JOB-DEFAULT", where="job", what="x" * 200, hint="") for _ in range(40)
-    )
+    found = tuple(finding("JOB-DEFAULT", where="job", what="x" * 200, hint="") for _ in range(40))
     said = closing_table(replace(record, settings=settings, findings=found))
     assert max(map(len, said.splitlines())) <= 80
     assert "40 notes" in said
