@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+
 from schorl.model.settings import ExtraLayer
 from schorl.model.surface import Verdict
 from schorl.zoning.features import build_features, structured_share, to_cells
@@ -23,6 +24,7 @@ def test_a_surface_is_scaled_by_its_root_mean_kriging_variance():
 
 def test_the_need_weighs_root_three_in_its_own_error():
     one = trial()
+    one = replace(one, need=replace(one.need, need_sd_kg_ha=np.full(one.grid.n_cells, 0.4)))
     table = build_features(one.grid, one.surfaces, one.need)
     column = table.table[:, table.names.index("need")]
     # The need's kriging variance: its whole variance less boron's short-range part, which no map
@@ -84,7 +86,7 @@ def test_an_extra_layer_of_noise_is_left_out():
 def test_points_in_one_cell_are_averaged_and_empty_cells_filled_from_near_ones():
     one = trial()
     centre = one.grid.centres_m[100]
-    points = np.array([centre + [1, 1], centre - [1, 1], centre + [200, 0]])
+    points = centre + np.array([[1.0, 1.0], [-1.0, -1.0], [200.0, 0.0]])
     column = to_cells(points, np.array([2.0, 4.0, 10.0]), one.grid)
     assert column[100] == 3.0
     assert np.isfinite(column).all()

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+
 from schorl.zoning.structure import moran, nearest_neighbours, structure_p
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
 from schorl.zoning.predicted import LeftOut, least_skill, left_out_means, need_skill
 from schorl.zoning.zone_count import (
     choose_count,
