@@ -56,9 +56,7 @@ def test_order_turning_and_moving_change_nothing(seed, family, angle):
     plain, spread = krige(places, values, targets, model)
     order = random.permutation(len(values))
     turn = np.array([[np.cos(angle), -np.sin(angle)], [np.sin(angle), np.cos(angle)]])
-    moved, again = krige(
-        places[order] @ turn.T + 4e5, values[order], targets @ turn.T + 4e5, model
-    )
+    moved, again = krige(places[order] @ turn.T + 4e5, values[order], targets @ turn.T + 4e5, model)
     assert moved == pytest.approx(plain, abs=1e-7)
     assert again == pytest.approx(spread, abs=1e-7)
 

@@ -49,7 +49,9 @@ def test_one_ppm_is_two_pounds_an_acre_in_a_furrow_slice():
     """2,000,000 lb of soil an acre: 1 ppm = 2 lb/acre = 2.24 kg/ha (Efficient Fertilizer Use
     Manual; arithmetic). The slice has 6 2/3 in at 1.32 g/cm³."""
     slice_cm, density = 2.54 * 20 / 3, 1.3235
-    assert float(kg_ha_per_mg_kg(density, slice_cm)) == pytest.approx(2 * KG_HA_PER_LB_ACRE, rel=1e-3)
+    assert float(kg_ha_per_mg_kg(density, slice_cm)) == pytest.approx(
+        2 * KG_HA_PER_LB_ACRE, rel=1e-3
+    )
 
 
 def test_danish_plough_layer():
@@ -59,7 +61,13 @@ def test_danish_plough_layer():
 
 @pytest.mark.parametrize(
     ("sand", "clay", "matter", "density"),
-    [(88, 5, 2.5, 1.43), (40, 20, 2.5, 1.43), (10, 35, 1, 1.38), (25, 50, 5, 1.30), (60, 25, 2.5, 1.50)],
+    [
+        (88, 5, 2.5, 1.43),
+        (40, 20, 2.5, 1.43),
+        (10, 35, 1, 1.38),
+        (25, 50, 5, 1.30),
+        (60, 25, 2.5, 1.50),
+    ],
 )
 def test_bulk_density_of_texture_classes(sand, clay, matter, density):
     """Saxton & Rawls 2006 equations worked for class middles."""

@@ -30,7 +30,8 @@ def test_the_book_gives_592_7_and_8_96():
 
 
 @pytest.mark.parametrize(
-    ("case", "nugget", "sill"), [("exp_10_a10", 0, 10), ("exp_20_a10", 0, 20), ("nug5_exp5_a10", 5, 5)]
+    ("case", "nugget", "sill"),
+    [("exp_10_a10", 0, 10), ("exp_20_a10", 0, 20), ("nug5_exp5_a10", 5, 5)],
 )
 def test_variants_of_the_book_case(case, nugget, sill):
     rows = pd.read_csv(REFERENCE / "isaaks_srivastava_cases.csv")

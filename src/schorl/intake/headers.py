@@ -172,7 +172,8 @@ def _meaning(name: str) -> str | None:
             return what
     reduced = re.sub(
         r"\b(hot water|heisswasser|mehlich[- ]?[13]|m3|dtpa|sorbitol|cat|extr\w*|avail\w*|soluble|"
-        r"walkley black|loi|by ignition|soil|content|total fraction)\b",
+        r"walkley black|loi|by ignition|soil|content|total fraction|pflanzenverfugbar\w*|disponi\w*|"
+        r"assimil\w*|verfugbar\w*|tillgang\w*)\b",
         " ",
         name,
     )

@@ -46,9 +46,10 @@ def read_cell(text: str, *, decimal_comma: bool) -> Cell:
     if match is None:
         return Cell(value=None, bad=True)
     number = _number(match.group(2), decimal_comma=decimal_comma)
-    if number is None:
+    unit = (match.group(3) or "").strip()
+    if number is None or (unit and unit_named(unit) is None):
         return Cell(value=None, bad=True)
-    return Cell(value=number, below=bool(match.group(1)), unit=(match.group(3) or "").strip())
+    return Cell(value=number, below=bool(match.group(1)), unit=unit)
 
 
 def _number(text: str, *, decimal_comma: bool) -> float | None:

@@ -89,14 +89,15 @@ def _unit_of(
         return unit
     from_cells = {cell.unit for cell in cells if cell.unit}
     named = {unit_named(one) for one in from_cells}
-    if None in named or len(named) > 1:
+    said = column.unit or unit_named(table.units[column.place])
+    if len(named | {said} - {None}) > 1:
         draft.note(
             "IN-UNIT",
-            f"`{column.header}` mixes units in its cells: {', '.join(sorted(from_cells))}",
+            f"`{column.header}` mixes units: {', '.join(sorted({*from_cells, said or 'none'}))}",
             f"bring it to one unit, or give `--unit {name}=...`",
         )
         return None
-    unit = column.unit or unit_named(table.units[column.place]) or (named.pop() if named else None)
+    unit = said or (named.pop() if named else None)
     if unit is None:
         draft.note(
             "IN-UNIT",

@@ -1,0 +1,300 @@
+"""The report in a real browser: Debian's Chromium through Playwright, axe-core from npm.
+
+Skipped where the browser is absent; the accessibility check also where axe-core is.
+"""
+
+from __future__ import annotations
+
+import os
+import shutil
+import tempfile
+from dataclasses import replace
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from schorl.report.layers import boron_range, layers_of, map_spread, short_before
+from schorl.report.page import report_page
+from support.example_record import example_record
+
+playwright = pytest.importorskip("playwright.sync_api", reason="Playwright is not installed")
+
+CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
+NODE = Path(os.environ.get("SCHORL_NODE_MODULES") or Path(tempfile.gettempdir()) / "schorl-node")
+AXE = NODE / "node_modules" / "axe-core" / "axe.min.js"
+READY = "#map[data-ready=yes]"
+NASTY = "</script><script>document.title='taken'</script><img src=x onerror=\"document.title='x'\">"
+
+pytestmark = pytest.mark.skipif(CHROMIUM is None, reason="Debian's chromium is not installed")
+
+
+@pytest.fixture(scope="module")
+def record():
+    """The example, with surfaces that are rough enough to tell cells apart."""
+    made = example_record()
+    random = np.random.default_rng(11)
+    surfaces = {
+        name: replace(one, estimate=one.estimate * random.uniform(0.9, 1.1, made.grid.n_cells))
+        for name, one in made.surfaces.items()
+    }
+    return replace(made, surfaces=surfaces)
+
+
+@pytest.fixture(scope="module")
+def page_file(record, tmp_path_factory):
+    path = tmp_path_factory.mktemp("report") / "report.html"
+    path.write_bytes(report_page(record))
+    return path
+
+
+@pytest.fixture(scope="module")
+def browser():
+    with playwright.sync_playwright() as driver:
+        made = driver.chromium.launch(
+            executable_path=CHROMIUM, args=["--no-sandbox", "--disable-gpu"]
+        )
+        yield made
+        made.close()
+
+
+@pytest.fixture
+def opened(browser):
+    """Open a file in a fresh page that keeps every request and complaint."""
+    contexts = []
+
+    def open_file(path: Path, **settings):
+        context = browser.new_context(**settings)
+        contexts.append(context)
+        page = context.new_page()
+        page.asked, page.said = [], []
+        page.on("request", lambda request: page.asked.append(request.url))
+        page.on("console", lambda message: page.said.append(message.text))
+        page.on("pageerror", lambda error: page.said.append(str(error)))
+        page.goto(path.as_uri())
+        if settings.get("java_script_enabled", True):
+            page.locator(READY).wait_for()
+        return page
+
+    yield open_file
+    for context in contexts:
+        context.close()
+
+
+def on_screen(page, record, cell: int) -> tuple[float, float]:
+    """Where the middle of a cell lies on the screen."""
+    east, north = record.grid.centres_m[cell]
+    west, _, _, top = record.field.boundary.bounds
+    field = page.locator("#field")
+    field.scroll_into_view_if_needed()
+    return tuple(
+        field.evaluate(
+            "(svg, at) => { const p = new DOMPoint(...at).matrixTransform(svg.getScreenCTM());"
+            " return [p.x, p.y]; }",
+            [east - west, top - north],
+        )
+    )
+
+
+def reading(page) -> dict[str, str]:
+    rows = page.locator("#reading > div").all()
+    return {row.locator("dt").inner_text(): row.locator("dd").inner_text() for row in rows}
+
+
+def some_cells(record, count=12):
+    return np.random.default_rng(2).integers(0, record.grid.n_cells, count)
+
+
+def colour_at(page, x: float, y: float) -> tuple[int, ...]:
+    """Colour of one pixel of the screen, read by another library."""
+    from rasterio.io import MemoryFile
+
+    shot = page.screenshot(clip={"x": round(x), "y": round(y), "width": 1, "height": 1})
+    with MemoryFile(shot) as held, held.open() as picture:
+        return tuple(int(band[0, 0]) for band in picture.read([1, 2, 3]))
+
+
+def test_opens_without_a_request_or_a_complaint(opened, page_file):
+    page = opened(page_file)
+    for button in page.locator("input[name=show]").all():
+        button.check(force=True)
+    assert page.asked == [page_file.as_uri()]
+    assert page.said == []
+
+
+def test_every_layer_is_shown_with_its_legend_and_alone(opened, page_file, record):
+    page = opened(page_file)
+    keys = ["rate", "zones", *(layer.key for layer in layers_of(record))]
+    assert [b.get_attribute("value") for b in page.locator("input[name=show]").all()] == keys
+    for key in keys:
+        page.locator(f"#show-{key}").check(force=True)
+        visible = page.evaluate(
+            "[...document.querySelectorAll('#field .layer')].filter("
+            "g => getComputedStyle(g).display !== 'none').map(g => g.classList[1])"
+        )
+        assert set(visible) == {f"on-{key}"}
+        shown = [k for k in keys if page.locator(f"#key-{k}").is_visible()]
+        assert shown == [key]
+    for unit in ("kg/ha", "mg/kg", "%"):
+        assert page.locator(".key", has_text=unit).count() > 0
+
+
+@pytest.mark.filterwarnings("ignore::rasterio.errors.NotGeoreferencedWarning")
+def test_colours_on_the_screen_are_those_of_the_legend(opened, page_file, record):
+    page = opened(page_file)
+    for box in page.locator("#map input[type=checkbox]").all():
+        box.uncheck(force=True)
+    for layer in layers_of(record):
+        if layer.key == "boron":  # its plus and minus signs lie on top
+            continue
+        page.locator(f"#show-{layer.key}").check(force=True)
+        for cell in some_cells(record, 4):
+            colour = layer.scale.colours[layer.classes[cell]]
+            wanted = tuple(int(colour[at : at + 2], 16) for at in (1, 3, 5))
+            assert colour_at(page, *on_screen(page, record, cell)) == wanted, (layer.key, cell)
+
+
+def test_values_under_the_pointer_are_those_of_the_surfaces(opened, page_file, record):
+    page = opened(page_file)
+    low, high = boron_range(record)
+    need, prescription = record.cell_need, record.prescription
+    for cell in some_cells(record):
+        page.mouse.move(*on_screen(page, record, cell))
+        said = reading(page)
+        boron = record.surfaces["boron"]
+        rate = prescription.rates[prescription.zone_map.labels[cell]]
+        assert said["Boron"] == (
+            f"{boron.estimate[cell]:.2f} mg/kg, 9 times in 10 between {low[cell]:.2f} and "
+            f"{high[cell]:.2f}"
+        )
+        assert said["Standard deviation of the map"] == f"{map_spread(boron)[cell]:.3f} mg/kg"
+        assert said["Clay"] == f"{record.surfaces['clay'].estimate[cell]:.1f} %"
+        assert said["Organic matter"] == f"{record.surfaces['organic_matter'].estimate[cell]:.2f} %"
+        assert said["Target"].startswith(f"{need.target_mg_kg[cell]:.2f} mg/kg")
+        assert said["Chance"].startswith(f"short now {100 * short_before(record)[cell]:.0f} %")
+        assert said["Zone"].startswith(f"{rate.zone} ")
+        assert said["Rate"].startswith(f"{rate.product_rate:.1f} kg/ha")
+        assert said["Why"] == rate.why
+
+
+def test_outside_the_field_nothing_is_read(opened, page_file):
+    page = opened(page_file)
+    field = page.locator("#field")
+    field.scroll_into_view_if_needed()
+    box = field.bounding_box()
+    page.mouse.move(box["x"] + 3, box["y"] + 3)
+    assert reading(page) == {"Place": "outside the field"}
+
+
+def test_the_map_is_worked_by_keyboard_alone(opened, page_file):
+    page = opened(page_file)
+    page.locator("#show-rate").focus()
+    page.keyboard.press("ArrowRight")
+    assert page.locator("#show-zones").is_checked()
+    for _ in range(12):
+        page.keyboard.press("Tab")
+        if page.evaluate("document.activeElement.id") == "field":
+            break
+    assert page.evaluate("document.activeElement.id") == "field"
+    page.keyboard.press("ArrowLeft")
+    first = reading(page)["Place"]
+    page.keyboard.press("Shift+ArrowLeft")
+    assert reading(page)["Place"] != first
+    assert "Zone" in page.locator("#spoken").inner_text()
+    whole = page.locator("#field").get_attribute("viewBox")
+    page.keyboard.press("+")
+    assert page.locator("#field").get_attribute("viewBox") != whole
+    page.keyboard.press("0")
+    nearly = [float(v) for v in page.locator("#field").get_attribute("viewBox").split()]
+    assert nearly == pytest.approx([float(v) for v in whole.split()], abs=0.01)
+
+
+def test_a_mouse_that_moves_is_not_read_aloud(opened, page_file, record):
+    page = opened(page_file)
+    page.mouse.move(*on_screen(page, record, 400))
+    assert "Boron" in reading(page)
+    assert page.locator("#spoken").inner_text() == ""
+
+
+def test_phone_width_with_a_finger(opened, page_file, record):
+    page = opened(page_file, viewport={"width": 390, "height": 844}, has_touch=True, is_mobile=True)
+    assert page.evaluate("document.documentElement.scrollWidth") <= 390
+    page.touchscreen.tap(*on_screen(page, record, record.grid.n_cells // 3))
+    assert "Boron" in reading(page)
+    assert page.locator("#spoken").inner_text() != ""
+    for target in page.locator("button:visible, .choice:visible").all():
+        box = target.bounding_box()
+        assert min(box["width"], box["height"]) >= 24  # WCAG 2.2, 2.5.8
+
+
+def test_print_view_holds_all_maps_and_no_controls(opened, page_file, record):
+    page = opened(page_file)
+    page.emulate_media(media="print")
+    assert page.locator(".atlas").is_visible()
+    assert page.locator(".card").count() == 2 + len(layers_of(record))
+    for gone in ("nav", ".choices", ".zoom", ".reading"):
+        assert not page.locator(gone).is_visible()
+    pypdf = pytest.importorskip("pypdf")
+    import io
+
+    pages = pypdf.PdfReader(io.BytesIO(page.pdf(prefer_css_page_size=True))).pages
+    assert 3 <= len(pages) <= 14
+    said = " ".join(one.extract_text() for one in pages)
+    assert "H360FD" in said
+
+
+def test_without_javascript_maps_can_still_be_chosen(opened, page_file):
+    page = opened(page_file, java_script_enabled=False)
+    assert page.locator("#field .on-rate").first.is_visible()
+    page.locator("label[for=show-clay]").click()
+    assert page.locator("#field .on-clay").first.is_visible()
+    assert not page.locator("#field .on-rate").first.is_visible()
+    assert page.locator("#key-clay").is_visible()
+    assert page.locator(".unscripted").is_visible()
+    assert not page.locator(".zoom").is_visible()
+
+
+def test_text_from_files_runs_nothing(opened, record, tmp_path):
+    samples = replace(record.samples, ids=(NASTY,) * len(record.samples))
+    rates = tuple(replace(rate, why=NASTY) for rate in record.prescription.rates)
+    hostile = replace(
+        record,
+        samples=samples,
+        prescription=replace(record.prescription, rates=rates, advice=(NASTY,)),
+        settings=replace(record.settings, prepared_by=NASTY, field_name="Field"),
+    )
+    path = tmp_path / "report.html"
+    path.write_bytes(report_page(hostile))
+    page = opened(path)
+    page.mouse.move(*on_screen(page, record, 500))
+    assert reading(page)["Why"] == NASTY
+    assert page.title().startswith("Field")
+    assert page.said == []
+
+
+@pytest.mark.parametrize(
+    "settings",
+    [
+        {"viewport": {"width": 1280, "height": 900}},
+        {"viewport": {"width": 390, "height": 844}},
+        {"viewport": {"width": 1280, "height": 900}, "media": "print"},
+    ],
+    ids=["desktop", "phone", "print"],
+)
+def test_axe_finds_no_fault(opened, page_file, record, settings):
+    if not AXE.is_file():
+        pytest.skip(f"axe-core is not at {AXE.parent}; npm install axe-core there")
+    page = opened(page_file, viewport=settings["viewport"])
+    media = settings.get("media")
+    if media:
+        page.emulate_media(media=media)
+    else:
+        page.mouse.move(*on_screen(page, record, 500))
+    page.evaluate(AXE.read_text(encoding="utf-8"))
+    tags = ["wcag2a", "wcag2aa", "wcag21a", "wcag21aa", "wcag22aa", "best-practice"]
+    found = page.evaluate(
+        "tags => axe.run(document, {runOnly: tags}).then(r => r.violations.map("
+        "v => [v.id, v.impact, v.nodes.map(n => n.html.slice(0, 160)).slice(0, 3)]))",
+        tags,
+    )
+    assert found == []
