@@ -88,7 +88,7 @@ def table(head: Iterable[object], rows: Iterable[Iterable[object]], *, caption: 
 
 def scrolled(inner: Safe, name: str) -> Safe:
     """A box that scrolls sideways where a table is too wide, reachable by keyboard."""
-    return tag("div", inner, class_="scroll", tabindex="0", role="region", aria_label=name)
+    return tag("div", inner, class_="scroll", tabindex="0", role="group", aria_label=name)
 
 
 def _is_figure(cell: object) -> bool:

@@ -100,7 +100,7 @@ def machine_section(record: RunRecord, shown: Shown) -> Safe:
     """What the machine is set to, calibrated with and loaded."""
     points = point_rows(record, shown)
     count = len(points[0]) - 1 if points else 0
-    head = ["", *("Lowest", "Mean", "Highest")[:count]]
+    head = ["Figure", *("Lowest", "Mean", "Highest")[:count]]
     settings = [[name, tag("span", value)] for name, value in setting_rows(record, shown)]
     loads = [[name, tag("span", value)] for name, value in load_rows(record, shown)]
     return section(
@@ -108,8 +108,8 @@ def machine_section(record: RunRecord, shown: Shown) -> Safe:
         table(head, points, caption="Calibration figures") if points else tag("p", UNKNOWN),
         tag(
             "div",
-            table(["Load", ""], loads, caption="What to load"),
-            table(["Set", ""], settings, caption="What to set"),
+            table(["Load", "Amount"], loads, caption="What to load"),
+            table(["Set", "To"], settings, caption="What to set"),
             class_="pair",
         ),
         tag("ul", *(tag("li", one) for one in record.prescription.machine.advice)),
