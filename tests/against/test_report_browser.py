@@ -170,11 +170,13 @@ def test_values_under_the_pointer_are_those_of_the_surfaces(opened, page_file, r
             f"{boron.estimate[cell]:.2f} mg/kg, 9 times in 10 between {low[cell]:.2f} and "
             f"{high[cell]:.2f}"
         )
-        assert said["Standard deviation of the map"] == f"{map_spread(boron)[cell]:.3f} mg/kg"
+        assert said["SD of the map"] == f"{map_spread(boron)[cell]:.3f} mg/kg"
         assert said["Clay"] == f"{record.surfaces['clay'].estimate[cell]:.1f} %"
         assert said["Organic matter"] == f"{record.surfaces['organic_matter'].estimate[cell]:.2f} %"
         assert said["Target"].startswith(f"{need.target_mg_kg[cell]:.2f} mg/kg")
-        assert said["Chance"].startswith(f"short now {100 * short_before(record)[cell]:.0f} %")
+        chance = f"{100 * short_before(record)[cell]:.0f} %"
+        chance = {"0 %": "under 1 %", "100 %": "over 99 %"}.get(chance, chance)
+        assert said["Chance"].startswith(f"short now {chance}, ")
         assert said["Zone"].startswith(f"{rate.zone} ")
         assert said["Rate"].startswith(f"{rate.product_rate:.1f} kg/ha")
         assert said["Why"] == rate.why

@@ -27,12 +27,17 @@ def safe_name(text: str) -> str:
 
 
 def write_synced(path: Path, data: bytes) -> None:
-    """Write a new file and push it to the disk; never through a link."""
+    """Write a new file and push it to the disk; never through a link, and whole or absent."""
     flags = os.O_WRONLY | os.O_CREAT | os.O_EXCL | getattr(os, "O_BINARY", 0)
-    with os.fdopen(os.open(path, flags, 0o644), "wb") as stream:
-        stream.write(data)
-        stream.flush()
-        os.fsync(stream.fileno())
+    handle = os.open(path, flags, 0o644)
+    try:
+        with os.fdopen(handle, "wb") as stream:
+            stream.write(data)
+            stream.flush()
+            os.fsync(stream.fileno())
+    except BaseException:
+        path.unlink(missing_ok=True)
+        raise
 
 
 def sync_folder(folder: Path) -> None:
