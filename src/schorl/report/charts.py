@@ -15,6 +15,7 @@ from schorl.model.surface import Surface
 from schorl.report.markup import Safe, shape, tag
 from schorl.report.scales import round_step
 from schorl.report.shown import Shown, figure
+from schorl.units import M_PER_FT
 
 INK, SOFT, GRID = "#14181c", "#4a535c", "#d3d8dd"
 DEEP, RUST = "#1c4e63", "#8f3a14"
@@ -137,17 +138,16 @@ def variogram_plot(surface: Surface, shown: Shown) -> Safe:
     """Pairs of samples as dots (larger: more pairs), the fitted variogram as a line."""
     fit = surface.fit
     assert fit is not None
-    lags, gammas = np.asarray(fit.lag_m), np.asarray(fit.semivariance)
-    pairs = np.asarray(fit.pairs)
-    far = max(float(lags.max(initial=0.0)), 1.2 * fit.practical_range_m)
+    unit_m = M_PER_FT if shown.us else 1.0
+    lags, gammas = np.asarray(fit.lag_m) / unit_m, np.asarray(fit.semivariance)
+    pairs, reach = np.asarray(fit.pairs), fit.practical_range_m / unit_m
+    far = max(float(lags.max(initial=0.0)), 1.2 * reach)
     if lags.size:
         far = min(far, 2.0 * float(lags.max()))
     sill = fit.nugget + fit.partial_sill
     top = 1.15 * max(sill, float(gammas.max(initial=0.0)), 1e-12)
     across, up = Axis(0.0, far, 46.0, 290.0), Axis(0.0, top, 150.0, 8.0)
-    parts = _frame(
-        across, up, lambda v: shown.length(v).split()[0], f"distance, {shown.length_unit}"
-    )
+    parts = _frame(across, up, lambda v: figure(v, 0), f"distance, {shown.length_unit}")
     parts.append(label(12, 80, "semivariance", transform="rotate(-90 12 80)"))
     if lags.size:
         most = max(float(pairs.max(initial=1.0)), 1.0)
@@ -156,14 +156,14 @@ def variogram_plot(surface: Surface, shown: Shown) -> Safe:
             dot = {"cx": across(float(lag)), "cy": up(float(gamma)), "r": radius}
             parts.append(shape("circle", dot | {"fill": "#fff", "stroke": INK}))
     steps = np.linspace(0.0, far, 60)
-    shape_of = correlation_in_place(steps.copy(), fit.family, fit.practical_range_m)
+    shape_of = correlation_in_place(steps.copy(), fit.family, reach)
     curve = fit.nugget + fit.partial_sill * (1.0 - shape_of)
     points = "L".join(
         f"{across(float(h))} {up(float(g))}" for h, g in zip(steps, curve, strict=True)
     )
     parts.append(line("M" + points, DEEP, 2.5))
-    if fit.practical_range_m <= far:
-        at = across(fit.practical_range_m)
+    if reach <= far:
+        at = across(reach)
         parts.append(line(f"M{at} 8V150", RUST, 1.5, stroke_dasharray="4 3"))
     words = (
         f"Variogram: nugget {fit.nugget:.3g}, sill {sill:.3g}, practical range "

@@ -31,9 +31,16 @@ def field_map(record: RunRecord, shown: Shown) -> tuple[Safe, str, dict[str, Any
     body = tag(
         "div",
         _choices(layers),
-        tag("div", _svg(record, shown, layers, doubtful), _zoom_buttons(), class_="canvas"),
-        tag("div", legends(record, shown, layers), overlays(doubtful, shown), class_="keys"),
+        tag(
+            "div",
+            _svg(record, shown, layers, doubtful),
+            tag("div", id="scalebar", class_="scripted", aria_hidden="true"),
+            tag("div", "N", class_="north scripted", aria_hidden="true"),
+            _zoom_buttons(),
+            class_="canvas",
+        ),
         _reading_box(),
+        tag("div", legends(record, shown, layers), overlays(doubtful, shown), class_="keys"),
         class_="fieldmap",
         id="map",
     )

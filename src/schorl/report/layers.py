@@ -124,7 +124,7 @@ def _spread(record: RunRecord) -> Layer | None:
         map_spread(surface),
         scales.UNSURE,
         key="boron-sd",
-        name="Boron, standard deviation",
+        name="SD of boron",
         unit=surface.unit,
         group="How sure",
         note=note,

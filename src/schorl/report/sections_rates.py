@@ -20,7 +20,7 @@ def zone_section(record: RunRecord, shown: Shown) -> Safe:
         "Mean ± SD", "Target", "Short now → after", "Over after", "Clay, %", "Organic matter, %",
         "Samples",
     ]  # fmt: skip
-    heads = [tag("th", cell, scope="col") for cell in head]
+    heads = [tag("th", tag("span", cell), scope="col") for cell in head]
     rows = [
         row
         for place in range(len(record.prescription.rates))
@@ -42,7 +42,7 @@ def _zone_rows(record: RunRecord, shown: Shown, place: int, axis: charts.Axis) -
     look, fills = rate.outlook, zones_svg.rate_colours(record.prescription)
     kind = tag("span", kind_words(zone.kind), class_="soft") if zone.kind != "zone" else ""
     cells = [
-        _rate_cell(shown.rate_figure(rate.product_rate), fills[rate.product_rate]),
+        _rate_cell(zones_svg.rate_labels(record, shown)[place], fills[rate.product_rate]),
         shown.boron_rate_figure(rate.boron_kg_ha),
         shown.area_figure(rate.area_ha),
         charts.ladder(record, place, axis),
@@ -56,7 +56,9 @@ def _zone_rows(record: RunRecord, shown: Shown, place: int, axis: charts.Axis) -
     ]
     first = tag("th", tag("b", rate.zone), " ", kind, scope="row", rowspan="2")
     upper = tag("tr", first, *(tag("td", cell) for cell in cells), class_="upper")
-    lower = tag("tr", tag("td", why_words(rate, shown), colspan=str(len(cells)), class_="why"))
+    lower = tag(
+        "tr", tag("td", tag("span", why_words(rate, shown)), colspan=str(len(cells)), class_="why")
+    )
     return upper, lower
 
 

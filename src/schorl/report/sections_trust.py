@@ -211,7 +211,7 @@ def source_section(record: RunRecord) -> Safe:
     """Every figure that was used, where it comes from and how far it was checked."""
     rows = []
     for row in record.prescription.sources:
-        name = " ".join(word for word in (row.get("row", ""), row.get("figure", "")) if word)
+        name = ", ".join(word for word in (row.get("row", ""), row.get("figure", "")) if word)
         value = f"{row.get('value', '')} {row.get('unit', '')}".strip()
         status = row.get("status", "")
         rows.append(

@@ -151,7 +151,7 @@ def _skill_words(surface: Surface) -> str:
     share = percent(quality.skill)
     return (
         "Each sample was left out in turn and told from the others: the map explains "
-        f"{share} of the differences, is off by {quality.rmse:.2g} {surface.unit} on the whole, "
+        f"{share} of the differences, is typically off by {quality.rmse:.2g} {surface.unit}, "
         f"and {held}."
     )
 
@@ -169,7 +169,7 @@ def fit_words(surface: Surface, shown: Shown) -> str:
     return (
         f"{family}, nugget {fit.nugget:.3g}, partial sill {fit.partial_sill:.3g} (scale: {scale}), "
         f"practical range {shown.length(fit.practical_range_m)}{turned}; "
-        "fitted by restricted maximum likelihood"
+        "fitted by restricted maximum likelihood to all samples at once; the dots are for the eye"
     )
 
 
@@ -180,8 +180,8 @@ def why_words(rate: ZoneRate, shown: Shown) -> str:
     return (
         f"boron {figure(rate.boron_mean_mg_kg, 2)} ± {figure(rate.boron_sd_mg_kg, 2)} ppm against a "
         f"target of {figure(rate.target_mg_kg, 2)}: the test asks for "
-        f"{shown.boron_rate(rate.need_kg_ha)}; given {shown.boron_rate_figure(rate.boron_kg_ha)}, "
-        f"held by {RULED[rate.ruled_by]}"
+        f"{shown.boron_rate(rate.need_kg_ha)}; given {shown.boron_rate_figure(rate.boron_kg_ha)} "
+        f"({RULED[rate.ruled_by]})"
     )
 
 

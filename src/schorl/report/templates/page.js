@@ -55,24 +55,26 @@
     return best;
   }
 
+  // A chance is never quite nothing and never quite sure.
+  const chance = (said) => (said === "0" ? "under 1 %" : said === "100" ? "over 99 %" : `${said} %`);
+
   function rowsAt(cell, at) {
     const value = (name) => readings[name] && readings[name][cell];
     const unit = (name) => facts.units[name] || "";
     const zone = facts.zones[Number(value("zone"))];
-    const rows = [["Zone", `${zone.zone} (${zone.kind})`], ["Rate", `${zone.rate} (${zone.boron})`], ["Held by", zone.ruled]];
+    const rows = [["Zone", `${zone.zone} (${zone.kind})`], ["Rate", `${zone.rate} (${zone.boron})`], ["Why", zone.why], ["Held by", zone.ruled]];
     const boron = value("boron");
     if (boron) rows.push(["Boron", `${boron} ${unit("boron")}, 9 times in 10 between ${value("low")} and ${value("high")}`]);
-    if (value("boron_sd")) rows.push(["Standard deviation of the map", `${value("boron_sd")} ${unit("boron")}`]);
     rows.push(["Target", `${value("target")} ${unit("boron")}, soil ceiling ${value("ceiling")}`]);
-    rows.push(["Chance", `short now ${value("short")} %, over the ceiling after ${value("over")} %`]);
+    rows.push(["Chance", `short now ${chance(value("short"))}, over the ceiling after ${chance(value("over"))}`]);
     for (const [name, label] of [["organic_matter", "Organic matter"], ["clay", "Clay"]]) {
       const declared = facts.constant.includes(name) ? " (declared)" : "";
       if (value(name)) rows.push([label, `${value(name)} ${unit(name)}${declared}`]);
     }
+    if (value("boron_sd")) rows.push(["SD of the map", `${value("boron_sd")} ${unit("boron")}`]);
     const near = nearestSample(at);
     if (near) rows.push(["Nearest sample", `${near.name}, ${Math.round(near.away * facts.metre)} ${facts.length} away, ${near.said}`]);
     rows.push(["Place", `east ${(facts.west + at[0]).toFixed(0)} m, north ${(facts.north - at[1]).toFixed(0)} m`]);
-    rows.push(["Why", zone.why]);
     return rows;
   }
 
@@ -94,7 +96,7 @@
       return row;
     }));
     // Only keys and taps are announced; a voice that follows the mouse would never stop.
-    if (speak) spoken.textContent = rows.slice(0, 4).map((row) => row.join(" ")).join(". ");
+    if (speak) spoken.textContent = rows.slice(0, 5).map((row) => row.join(" ")).join(". ");
   }
 
   // ---- view
@@ -113,8 +115,19 @@
     const letters = Math.max(home[2], home[3]) / 33;
     field.style.setProperty("--pin", Math.min(17, Math.max(14, letters * scale())) / (letters * scale()));
     const near = view[2] < home[2] * 0.999;
+    drawBar();
     field.style.touchAction = near ? "none" : "pan-y";
     canvas.classList.toggle("near", near);
+  }
+
+  // The longest round length that takes at most a quarter of the width.
+  function drawBar() {
+    const bar = document.getElementById("scalebar");
+    const perUnit = scale() / facts.metre;
+    const lengths = [1, 2, 5, 10, 20, 50, 100, 200, 500, 1000, 2000, 5000];
+    const length = lengths.filter((one) => one * perUnit <= field.clientWidth / 4).pop() || 1;
+    bar.style.width = `${length * perUnit}px`;
+    bar.textContent = `${length.toLocaleString("en")} ${facts.length}`;
   }
 
   function zoom(by, about) {
