@@ -19,10 +19,9 @@ def write_surfaces(folder: Path, record: RunRecord) -> None:
     """boron, boron_sd, organic_matter, clay, zones and rate on the cells inside the field."""
     surfaces, grid = record.surfaces, record.grid
     boron = surfaces["boron"]
-    sd = boron.map_sd * (boron.estimate if boron.transform == "log" else 1.0)
     layers = {
         "boron": (boron.estimate, boron.unit, "available boron"),
-        "boron_sd": (sd, boron.unit, "standard deviation of the boron surface"),
+        "boron_sd": (boron.map_sd_in_unit, boron.unit, "standard deviation of the boron surface"),
     }
     for name in ("organic_matter", "clay"):
         if name in surfaces:

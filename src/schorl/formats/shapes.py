@@ -45,8 +45,11 @@ def zone_shapes(record: RunRecord, *, decimals: int = DECIMALS) -> tuple[ZoneSha
     """
     prescription = record.prescription
     zones = prescription.zone_map.zones
-    moved = [in_degrees(zone.geometry, crs=record.field.crs, decimals=decimals) for zone in zones]
-    if not all(shapely.is_valid(one) for one in moved) or not shapely.coverage_is_valid(moved):
+    exact = [
+        transform_geometry(zone.geometry, source=record.field.crs, target=WGS84) for zone in zones
+    ]
+    moved = _rounded_together(exact, decimals)
+    if moved is None:
         what = "the zones are no longer a clean coverage after rounding to degrees"
         raise OutputProblem([finding("OUT-ROUNDING", where="zones", what=what)])
     return tuple(
@@ -55,9 +58,36 @@ def zone_shapes(record: RunRecord, *, decimals: int = DECIMALS) -> tuple[ZoneSha
     )
 
 
+def _rounded_together(exact: list[Any], decimals: int) -> list[Any] | None:
+    """All zones on one grid of degrees, a valid coverage; None where no way leads there.
+
+    Plain rounding keeps shared nodes shared and nearly always suffices. Where a node lies closer
+    to a foreign edge than the grid is wide, the coverage is cleaned at that width first, or the
+    finer grid of task data is taken.
+    """
+    width = 10.0**-decimals
+    attempts = [lambda: exact]
+    if hasattr(shapely, "coverage_clean"):
+        attempts += [
+            lambda: list(shapely.coverage_clean(exact, snapping_distance=width)),
+            lambda: list(shapely.coverage_clean(exact, snapping_distance=10 * width)),
+        ]
+    for places in dict.fromkeys((decimals, TASK_DECIMALS)):
+        for attempt in attempts:
+            rounded = [rounded_area(one, places) for one in attempt()]
+            sound = all(shapely.is_valid(one) and not one.is_empty for one in rounded)
+            if sound and shapely.coverage_is_valid(rounded):
+                return rounded
+    return None
+
+
 def in_degrees(geometry: Any, *, crs: str, decimals: int) -> Any:
     """A geometry in rounded longitude and latitude; points that fall together are merged."""
-    degrees = transform_geometry(geometry, source=crs, target=WGS84)
+    return rounded_area(transform_geometry(geometry, source=crs, target=WGS84), decimals)
+
+
+def rounded_area(degrees: Any, decimals: int) -> Any:
+    """Rounded coordinates; what rounding made invalid is mended."""
     rounded = shapely.transform(degrees, lambda points: np.round(points, decimals))
     if shapely.is_valid(rounded) and not rounded.is_empty:
         return rounded

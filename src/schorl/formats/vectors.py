@@ -50,7 +50,7 @@ def geojson_bytes(record: RunRecord, shapes: Iterable[ZoneShape]) -> bytes:
 
 def _rings(part: Any) -> list[list[list[float]]]:
     rings = [part.exterior, *part.interiors]
-    return [[[round(x, 7), round(y, 7)] for x, y in ring.coords] for ring in rings]
+    return [[[float(x), float(y)] for x, y in ring.coords] for ring in rings]
 
 
 def write_shapefile(folder: Path, shapes: Iterable[ZoneShape]) -> None:
