@@ -15,7 +15,7 @@ import numpy as np
 import pytest
 import shapely
 
-from schorl.report.layers import boron_range, layers_of, map_spread, short_before
+from schorl.report.layers import boron_range, layers_of, short_before
 from schorl.report.page import report_page
 from support.example_record import example_record
 
@@ -170,7 +170,7 @@ def test_values_under_the_pointer_are_those_of_the_surfaces(opened, page_file, r
             f"{boron.estimate[cell]:.2f} mg/kg, 9 times in 10 between {low[cell]:.2f} and "
             f"{high[cell]:.2f}"
         )
-        assert said["SD of the map"] == f"{map_spread(boron)[cell]:.3f} mg/kg"
+        assert said["SD of the map"] == f"{boron.map_sd_in_unit[cell]:.3f} mg/kg"
         assert said["Clay"] == f"{record.surfaces['clay'].estimate[cell]:.1f} %"
         assert said["Organic matter"] == f"{record.surfaces['organic_matter'].estimate[cell]:.2f} %"
         assert said["Target"].startswith(f"{need.target_mg_kg[cell]:.2f} mg/kg")
@@ -180,6 +180,25 @@ def test_values_under_the_pointer_are_those_of_the_surfaces(opened, page_file, r
         assert said["Zone"].startswith(f"{rate.zone} ")
         assert said["Rate"].startswith(f"{rate.product_rate:.1f} kg/ha")
         assert said["Why"] == rate.why
+
+
+def test_values_under_the_pointer_are_those_of_the_geotiffs(opened, page_file, record, tmp_path):
+    import rasterio
+
+    from schorl.formats.rasters import write_surfaces
+
+    write_surfaces(tmp_path, record)
+    page = opened(page_file)
+    names = {"Boron": "boron", "SD of the map": "boron_sd", "Clay": "clay", "Zone": "zones"}
+    names |= {"Organic matter": "organic_matter", "Rate": "rate"}
+    for label, name in names.items():
+        with rasterio.open(tmp_path / f"{name}.tif") as raster:
+            for cell in some_cells(record, 5):
+                page.mouse.move(*on_screen(page, record, cell))
+                said = reading(page)[label].split()[0].rstrip(",")
+                (value,) = next(raster.sample([record.grid.centres_m[cell]]))
+                decimals = len(said.partition(".")[2])
+                assert float(said) == pytest.approx(float(value), abs=0.5001 * 10.0**-decimals)
 
 
 def test_outside_the_field_nothing_is_read(opened, page_file):

@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from enum import StrEnum
 
+import numpy as np
+
 from schorl.model.arrays import Floats, lock
 from schorl.model.field import CellGrid
 from schorl.model.variogram import VariogramFit
@@ -83,6 +85,16 @@ class Surface:
             map_sd=self.map_sd,
             decision_sd=self.decision_sd,
         )
+
+    @property
+    def map_sd_in_unit(self) -> Floats:
+        """``map_sd`` in the property's own unit, shape ``(n_cells,)``.
+
+        On a logarithmic scale that of a lognormal with mean m, m sqrt(exp(s²) - 1).
+        """
+        if self.transform == "log":
+            return self.estimate * np.sqrt(np.expm1(self.map_sd**2))
+        return self.map_sd
 
     @property
     def constant(self) -> bool:

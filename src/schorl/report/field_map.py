@@ -89,6 +89,7 @@ def _svg(record: RunRecord, shown: Shown, layers: tuple[Layer, ...], doubtful: D
     numbers = tuple(str(rate.zone) for rate in prescription.rates)
     rates = zones_svg.rate_labels(record, shown)
     zones = zones_svg.zone_colours(prescription)
+    places = record.samples.east_north_m
     boundary = map_svg.path_of(record.field.boundary, sheet)
     cut = shape("clipPath", {"id": "cut"}, shape("path", {"d": boundary, "clip-rule": "evenodd"}))
 
@@ -111,8 +112,8 @@ def _svg(record: RunRecord, shown: Shown, layers: tuple[Layer, ...], doubtful: D
         outline,
         shape("g", {"id": "fieldline"}, map_svg.field_line(record, sheet, width=2.5 * thin)),
         shape("g", {"class": "samples"}, map_svg.sample_marks(record, sheet)),
-        layer("rate", zones_svg.zone_labels(record, sheet, rates, fills)),
-        layer("zones", zones_svg.zone_labels(record, sheet, numbers, zones)),
+        layer("rate", zones_svg.zone_labels(record, sheet, rates, fills, clear_of_m=places)),
+        layer("zones", zones_svg.zone_labels(record, sheet, numbers, zones, clear_of_m=places)),
         shape("path", {"id": "crossback", "fill": "none", "stroke": "#fff", "class": "cross back"}),
         shape("path", {"id": "cross", "fill": "none", "stroke": "#111", "class": "cross"}),
         shape("g", {"class": "furniture"}, map_svg.furniture(sheet, us=shown.us)),

@@ -9,7 +9,6 @@ import numpy as np
 from schorl.agronomy.chances import chance_over_ceiling, chance_short_of_target
 from schorl.model.arrays import Counts, Floats
 from schorl.model.record import RunRecord
-from schorl.model.surface import Surface
 from schorl.report import scales
 from schorl.report.scales import Scale
 
@@ -66,16 +65,6 @@ def boron_range(record: RunRecord) -> tuple[Floats, Floats]:
     return np.maximum(low, 0.0), high
 
 
-def map_spread(surface: Surface) -> Floats:
-    """Standard deviation of the surface in its own unit, ``(n_cells,)``.
-
-    On a logarithmic scale that of the lognormal, m sqrt(exp(s²) - 1).
-    """
-    if surface.transform == "log":
-        return surface.estimate * np.sqrt(np.expm1(surface.map_sd**2))
-    return surface.map_sd
-
-
 def layers_of(record: RunRecord) -> tuple[Layer, ...]:
     """All cell layers of a record, in the order they are offered; absent ones are left out."""
     made = [_boron(record), _supporting(record, "organic_matter"), _supporting(record, "clay")]
@@ -121,7 +110,7 @@ def _spread(record: RunRecord) -> Layer | None:
         return None
     note = "Standard deviation of the boron surface: how far the map itself may be off."
     return _even(
-        map_spread(surface),
+        surface.map_sd_in_unit,
         scales.UNSURE,
         key="boron-sd",
         name="SD of boron",
@@ -206,7 +195,7 @@ def readings_of(record: RunRecord) -> tuple[Readings, ...]:
             values = record.surfaces[name].estimate
             made.append(Readings(name=name, decimals=places, values=values))
     if "boron" in record.surfaces:
-        sd = map_spread(record.surfaces["boron"])
+        sd = record.surfaces["boron"].map_sd_in_unit
         made.append(Readings(name="boron_sd", decimals=3, values=sd))
     return tuple(made)
 

@@ -70,7 +70,7 @@ def overlays(doubtful: Doubtful, shown: Shown) -> Safe:
             said.append(
                 _hatch_key(
                     "left",
-                    f"untreated, though two times in three it is short: {shown.area(doubtful.left_ha)}",
+                    f"untreated, though two times in three it is short (often by too little for a pass): {shown.area(doubtful.left_ha)}",
                 )
             )
         drawn.append(tag("ul", *said, class_="hatchkey"))

@@ -8,7 +8,7 @@ import numpy as np
 import shapely
 from shapely.geometry import MultiPolygon, Polygon
 
-from schorl.model.arrays import Counts
+from schorl.model.arrays import Counts, Floats
 from schorl.model.field import Area, CellGrid
 from schorl.model.record import RunRecord
 from schorl.report import scales
@@ -84,20 +84,40 @@ def cell_runs(grid: CellGrid, chosen: Counts, sheet: Sheet) -> str:
     return "".join(said)
 
 
-def label_places(area: Area, *, least_radius_m: float) -> tuple[tuple[float, float], ...]:
-    """East and north of the middle of every part that has room for a label.
+def label_places(
+    area: Area, *, least_radius_m: float, clear_of_m: Floats | None = None, clear_m: float = 0.0
+) -> tuple[tuple[float, float], ...]:
+    """East and north for the label of every part that has room for one.
 
-    The middle is that of the largest inscribed circle, so that a label never leaves its zone. The
-    largest part of a zone gets one in any case.
+    The middle of the largest inscribed circle, so that a label never leaves its zone; where a
+    point of ``clear_of_m`` ``(n, 2)`` is nearer than ``clear_m``, the clearest place inside the
+    circle. The largest part of a zone gets a label in any case.
     """
     parts = list(area.geoms) if isinstance(area, MultiPolygon) else [area]
-    found = [(part, _circle(part)) for part in parts if isinstance(part, Polygon)]
-    found.sort(key=lambda one: (-one[1][2], one[1][0]))
+    found = [_circle(part) for part in parts if isinstance(part, Polygon)]
+    found.sort(key=lambda circle: (-circle[2], circle[0]))
     return tuple(
-        (east, north)
-        for place, (_, (east, north, radius)) in enumerate(found)
-        if radius >= least_radius_m or place == 0
+        _clearest(circle, clear_of_m, clear_m)
+        for place, circle in enumerate(found)
+        if circle[2] >= least_radius_m or place == 0
     )
+
+
+def _clearest(
+    circle: tuple[float, float, float], points_m: Floats | None, clear_m: float
+) -> tuple[float, float]:
+    east, north, radius = circle
+    if points_m is None or not len(points_m):
+        return east, north
+    turns = np.arange(8) * np.pi / 4
+    reach = 0.6 * max(radius - clear_m, 0.0)
+    places = np.array([[0.0, 0.0], *np.column_stack([np.sin(turns), np.cos(turns)]) * reach])
+    places += [east, north]
+    apart = places[:, None, :] - points_m[None, :, :]
+    # A label is about twice as wide as it is high: points beside it are nearer than they look.
+    away = np.hypot(apart[..., 0] / 1.6, apart[..., 1]).min(axis=1)
+    best = 0 if away[0] >= clear_m else int(np.argmax(away))
+    return float(places[best, 0]), float(places[best, 1])
 
 
 def _circle(part: Polygon) -> tuple[float, float, float]:

@@ -85,7 +85,7 @@ def _doubt_words(record: RunRecord, shown: Shown) -> list[str]:
     if doubtful.left_ha > 0:
         said.append(
             f"{shown.area(doubtful.left_ha)} are left untreated though two times in three they are "
-            "short (hatched the other way)."
+            "short, often by too little to be worth a pass (hatched the other way)."
         )
     return said
 

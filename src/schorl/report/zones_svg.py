@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from schorl.model.arrays import Floats
 from schorl.model.prescription import Prescription
 from schorl.model.record import RunRecord
 from schorl.model.zones import ZoneKind
@@ -102,7 +103,12 @@ def zone_lines(record: RunRecord, sheet: Sheet, *, width: float, colour: str = "
 
 
 def zone_labels(
-    record: RunRecord, sheet: Sheet, said: tuple[str, ...], fills: tuple[str, ...] | None
+    record: RunRecord,
+    sheet: Sheet,
+    said: tuple[str, ...],
+    fills: tuple[str, ...] | None,
+    *,
+    clear_of_m: Floats | None = None,
 ) -> Safe:
     """One label for every part of a zone with room for it; ink follows the fill."""
     size = FONT * sheet.side_m * 1.15
@@ -112,7 +118,9 @@ def zone_labels(
         halo = "#ffffff" if ink != "#ffffff" else None
         if fills and ink == "#ffffff":
             halo = fills[place]
-        for east, north in label_places(zone.geometry, least_radius_m=size * 0.8):
+        for east, north in label_places(
+            zone.geometry, least_radius_m=size * 0.8, clear_of_m=clear_of_m, clear_m=1.3 * size
+        ):
             x, y = sheet.place(east, north)
             drawn.append(words_at(x, y, said[place], size=size, colour=ink, halo=halo))
     return join(drawn)
