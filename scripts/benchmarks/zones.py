@@ -29,7 +29,9 @@ def main(arguments: list[str]) -> int:
     """Print one line a size, each measured in a process of its own."""
     if arguments[:1] == ["--here"]:
         return _measure(arguments[1])
-    print(f"{'cells':>9}{'least s':>9}{'median s':>10}{'rates s':>9}{'peak MB':>9}{'zones':>7}  target")
+    print(
+        f"{'cells':>9}{'least s':>9}{'median s':>10}{'rates s':>9}{'peak MB':>9}{'zones':>7}  target"
+    )
     for size in arguments or list(SIZES):
         command = [sys.executable, str(SCRIPTS / "bench.py"), "zones", "--here", size]
         done = subprocess.run(command, check=False)
@@ -41,7 +43,6 @@ def main(arguments: list[str]) -> int:
 def _measure(size: str) -> int:
     sys.path.insert(0, str(SCRIPTS))
     from quality_checks.zone_simulation import outcome_of, settings
-
     from schorl.steps.zoning import draw_zones
 
     side, cell = SIZES[size]
@@ -74,7 +75,6 @@ def _measure(size: str) -> int:
 
 def _inputs(side_m: float, cell_m: float) -> dict[str, object]:
     from quality_checks.zone_simulation import CRS, EAST, LEVEL, NORTH, cell_need, sample_need
-
     from schorl.geodesy import area_ha
     from schorl.model.field import Field, lay_grid
     from schorl.model.samples import Campaign, Measured, SampleSet

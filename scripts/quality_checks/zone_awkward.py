@@ -1,7 +1,7 @@
 """Zones on awkward fields: exact cover, validity, and ground too narrow for the machine.
 
 Eleven kinds of boundary, a smooth surface with 30 % of short-range noise on it, two to five zones
-asked for, any direction of travel, and on every third field a keep-off area and hot cells. Areas
+asked for, any direction of travel, a few hot cells, and on every third field a keep-off strip. Areas
 are summed here from the vertices (shoelace formula), not by the library that drew the zones.
 """
 
@@ -9,10 +9,13 @@ from __future__ import annotations
 
 import time
 from collections import defaultdict
+from dataclasses import replace
+from typing import Any
 
 import numpy as np
 import shapely
 import shapely.affinity
+
 from quality_checks.zone_simulation import (
     CRS,
     EAST,
@@ -22,13 +25,13 @@ from quality_checks.zone_simulation import (
     settings,
     smooth_field,
 )
-
 from schorl.geodesy import area_ha
-from schorl.model.field import Field, lay_grid
+from schorl.model.field import Area, Field, lay_grid
 from schorl.model.prescription import CellNeed
 from schorl.model.samples import Campaign, Measured, SampleSet
+from schorl.model.settings import RunSettings
 from schorl.model.surface import Surface, Verdict
-from schorl.model.zones import ZoneKind
+from schorl.model.zones import ZoneKind, ZoneMap
 from schorl.steps.zoning import draw_zones
 from schorl.zoning.cells import narrow_share
 from schorl.zoning.travel import TravelGrid, axes_of, ground_of
@@ -36,7 +39,7 @@ from schorl.zoning.travel import TravelGrid, axes_of, ground_of
 CELL_M = 5.0
 
 
-def _rough(random, radius: float):
+def _rough(random: np.random.Generator, radius: float) -> Area:
     angle = np.linspace(0.0, 2.0 * np.pi, 90, endpoint=False)
     reach = radius * (1.0 + 0.15 * random.standard_normal(90))
     return shapely.Polygon(np.column_stack([reach * np.cos(angle), reach * np.sin(angle)])).buffer(
@@ -44,25 +47,25 @@ def _rough(random, radius: float):
     )
 
 
-def _holes(random):
+def _holes(random: np.random.Generator) -> Area:
     ponds = [
         shapely.Point(*random.uniform(60, 340, 2)).buffer(random.uniform(2, 30)) for _ in range(4)
     ]
     return shapely.box(0, 0, 420, 400).difference(shapely.union_all(ponds))
 
 
-def _bend(random):
+def _bend(random: np.random.Generator) -> Area:
     way = np.cumsum(random.uniform([60, -80], [160, 120], (5, 2)), axis=0)
     return shapely.LineString(way).buffer(random.uniform(30, 70))
 
 
-def _touching(random):
+def _touching(random: np.random.Generator) -> Area:
     at = random.uniform(80, 220)
     hole = [(0, at), (random.uniform(20, 90), at + 25), (random.uniform(20, 90), at - 25)]
     return shapely.Polygon([(0, 0), (400, 0), (400, 300), (0, 300)], [hole])
 
 
-def _parts(random):
+def _parts(random: np.random.Generator) -> Area:
     return shapely.union_all(
         [
             shapely.box(0, 0, 200, 200),
@@ -73,7 +76,7 @@ def _parts(random):
     )
 
 
-def _neck(random):
+def _neck(random: np.random.Generator) -> Area:
     return shapely.union_all(
         [
             shapely.box(0, 0, 180, 200),
@@ -121,11 +124,11 @@ def awkward_report(fields: int, *, seed: int) -> None:
     )
 
 
-def _figures(kind: str, place: int, random) -> tuple[float, ...]:
+def _figures(kind: str, place: int, random: np.random.Generator) -> tuple[float, ...]:
     boundary = shapely.affinity.rotate(KINDS[kind](random), random.uniform(0, 180), origin=(0, 0))
     if kind == "edges on cell edges":
         boundary = KINDS[kind](random)
-    boundary = shapely.transform(boundary, lambda points: points + [EAST, NORTH])
+    boundary = shapely.transform(boundary, lambda points: points + np.array([EAST, NORTH]))
     one = _inputs(boundary, random)
     zoning = {"count": int(random.integers(2, 6)), "least_area_ha": 0.25}
     if place % 3 == 0:
@@ -139,14 +142,12 @@ def _figures(kind: str, place: int, random) -> tuple[float, ...]:
     return (*_checked(zoned.zone_map, one["field"]), seconds)
 
 
-def _turned(job, random):
-    from dataclasses import replace
-
+def _turned(job: RunSettings, random: np.random.Generator) -> RunSettings:
     heading = None if random.random() < 0.5 else float(random.uniform(0, 180))
     return replace(job, zoning=replace(job.zoning, heading_deg=heading))
 
 
-def _checked(zone_map, field) -> tuple[float, float, float, float, float]:
+def _checked(zone_map: ZoneMap, field: Field) -> tuple[float, float, float, float, float]:
     shapes = [zone.geometry for zone in zone_map.zones]
     apart = shapely.symmetric_difference(shapely.union_all(shapes), field.boundary).area
     valid = (
@@ -161,7 +162,7 @@ def _checked(zone_map, field) -> tuple[float, float, float, float, float]:
     return float(valid), apart, total, narrow if len(zones) > 1 else 0.0, area
 
 
-def _narrow(shapes, heading_deg: float) -> float:
+def _narrow(shapes: list[Area], heading_deg: float) -> float:
     """Share of the zones in which no rectangle of exactly 24 by 20 m fits, by cells of 1 m."""
     job = settings()
     ground = ground_of(job.machine, least_area_ha=0.25)
@@ -178,7 +179,7 @@ def _narrow(shapes, heading_deg: float) -> float:
     return narrow_share(shapes, fine, ground)
 
 
-def _shoelace(shape) -> float:
+def _shoelace(shape: Area) -> float:
     """Area from the vertices, holes taken off."""
     area = 0.0
     for part in shapely.get_parts(shape):
@@ -188,7 +189,7 @@ def _shoelace(shape) -> float:
     return area
 
 
-def _inputs(boundary, random) -> dict:
+def _inputs(boundary: Area, random: np.random.Generator) -> dict[str, Any]:
     field = Field(
         name="awkward",
         boundary=boundary,

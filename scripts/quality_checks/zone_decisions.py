@@ -6,6 +6,7 @@ import time
 from dataclasses import dataclass
 
 import numpy as np
+
 from quality_checks.zone_simulation import (
     KINDS,
     SEPARATIONS,
@@ -16,10 +17,10 @@ from quality_checks.zone_simulation import (
     simulate,
     true_loss,
 )
-
+from schorl.model.zones import ZoneMap
 from schorl.steps.mapping import map_surfaces
 from schorl.steps.zoning import draw_zones
-from schorl.zoning.drawing import cluster_maps
+from schorl.zoning.drawing import ClusterMap, cluster_maps
 from schorl.zoning.features import build_features
 from schorl.zoning.indices import index_table
 from schorl.zoning.zone_count import choose_count, enough_zones, gate_open
@@ -57,7 +58,7 @@ class Judged:
         return max(self.true_saving.values()) >= WORTH
 
 
-def judge_field(kind: str, separation: float, count: int, *, seed) -> Judged:
+def judge_field(kind: str, separation: float, count: int, *, seed: list[int]) -> Judged:
     """Simulate a field, let every rule choose, and score the choices against the truth."""
     one = simulate(kind, separation, count, seed=seed)
     surfaces = dict(map_surfaces(one.samples, one.grid, seed=0).surfaces)
@@ -80,7 +81,7 @@ def judge_field(kind: str, separation: float, count: int, *, seed) -> Judged:
     nothing = np.zeros(one.grid.n_cells, np.intp)
     flat = true_loss(nothing, need, one.true_need)
 
-    def saved(labels) -> float:
+    def saved(labels: np.ndarray) -> float:
         return 1.0 - true_loss(labels, need, one.true_need) / flat
 
     true_saving = {1: 0.0} | {k: saved(found.labels) for k, found in maps.items()}
@@ -100,7 +101,7 @@ def judge_field(kind: str, separation: float, count: int, *, seed) -> Judged:
     )
 
 
-def _choices(zoned, table, maps) -> dict[str, int]:
+def _choices(zoned: ZoneMap, table: np.ndarray, maps: dict[int, ClusterMap]) -> dict[str, int]:
     savings = {row.count: row.saving for row in zoned.table}
     chosen = {
         OUR_RULE: zoned.count,
@@ -123,13 +124,15 @@ def _choices(zoned, table, maps) -> dict[str, int]:
     return chosen
 
 
-def decisions_report(count: int, fields: int, *, seed: int) -> list[Judged]:
+def decisions_report(count: int, fields: int, *, seed: int, minutes: float = 1e9) -> list[Judged]:
     """Judge fields of all kinds and separations in equal shares, and print the table."""
     cases = [(kind, sep) for kind in KINDS for sep in SEPARATIONS]
     started, judged = time.perf_counter(), []
     for place in range(fields):
         kind, separation = cases[place % len(cases)]
         judged.append(judge_field(kind, separation, count, seed=[seed, count, place]))
+        if time.perf_counter() - started > 60.0 * minutes:
+            break
     seconds = time.perf_counter() - started
     print(f"\n{count} samples asked for, {len(judged)} fields, {seconds:.0f} s")
     _print_rules(judged, count)
@@ -147,7 +150,7 @@ def _print_rules(judged: list[Judged], count: int) -> None:
         zoned = np.array([one.chosen[rule] > 1 for one in judged])
         real = np.array([one.real[rule] for one in judged])
         print(
-            f"{rule:<30}{(zoned == worth).mean():>7.3f}{zoned[noise].mean():>13.3f}"
+            f"{rule:<30}{(zoned == worth).mean():>7.3f}{np.mean(zoned[noise]) if noise.any() else np.nan:>13.3f}"
             f"{(real < WORSE).mean():>8.3f}{real.mean():>8.3f}{real.mean() / attainable:>12.3f}"
         )
     print(

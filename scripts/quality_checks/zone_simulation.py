@@ -20,7 +20,9 @@ agronomy.
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import shapely
@@ -38,7 +40,9 @@ from schorl.model.settings import (
     RunSettings,
     ZoneSettings,
 )
+from schorl.model.surface import Surface
 from schorl.zoning.loss import plan_loss
+from schorl.zoning.plans import Outcome
 
 KINDS = ("Z2", "Z3", "Z4", "Z5", "N1", "N2", "N3")
 SEPARATIONS = (2.0, 3.0, 4.0)
@@ -68,13 +72,15 @@ class Simulated:
         return need_kg_ha(**self.truth)
 
 
-def need_kg_ha(*, boron, organic_matter, clay):
+def need_kg_ha(*, boron: np.ndarray, organic_matter: np.ndarray, clay: np.ndarray) -> np.ndarray:
     """Need by the rate model above."""
     target = 0.80 + 0.010 * (clay - 22.0) - 0.03 * (organic_matter - 2.5)
     return MASS * (target - boron)
 
 
-def smooth_field(random, rows: int, cols: int, range_m: float, *, gaussian: bool) -> np.ndarray:
+def smooth_field(
+    random: np.random.Generator, rows: int, cols: int, range_m: float, *, gaussian: bool
+) -> np.ndarray:
     """A stationary random field with variance 1 by circulant embedding on a torus twice as wide."""
     tall, broad = 2 * rows, 2 * cols
     down = np.minimum(np.arange(tall), tall - np.arange(tall))[:, None] * CELL_M
@@ -87,7 +93,7 @@ def smooth_field(random, rows: int, cols: int, range_m: float, *, gaussian: bool
     return made[:rows, :cols]
 
 
-def _classes(random, rows, cols, count):
+def _classes(random: np.random.Generator, rows: int, cols: int, count: int) -> np.ndarray:
     while True:
         fields = [smooth_field(random, rows, cols, 350.0, gaussian=True) for _ in range(count)]
         classes = np.argmax(fields, axis=0)
@@ -95,7 +101,7 @@ def _classes(random, rows, cols, count):
             return classes
 
 
-def _class_means(random, count, separation):
+def _class_means(random: np.random.Generator, count: int, separation: float) -> np.ndarray:
     """Means (count, 3) whose nearest pair lies ``separation`` apart, none three times as far."""
     while True:
         means = random.normal(size=(count, 3))
@@ -105,7 +111,9 @@ def _class_means(random, count, separation):
             return means - means.mean(axis=0)
 
 
-def _truth(random, kind, separation, rows, cols):
+def _truth(
+    random: np.random.Generator, kind: str, separation: float, rows: int, cols: int
+) -> tuple[np.ndarray, np.ndarray]:
     """Values in units, (3, rows, cols), and the true classes."""
     classes = np.zeros((rows, cols), int)
     if kind == "N1":
@@ -125,7 +133,7 @@ def _truth(random, kind, separation, rows, cols):
     return units + means.T[:, classes], classes
 
 
-def _jittered(random, count):
+def _jittered(random: np.random.Generator, count: int) -> np.ndarray:
     """Sample places on a jittered grid of about ``count`` points, at cell centres."""
     cols = round(np.sqrt(count * WIDE_M / HIGH_M))
     rows = max(round(count / cols), 1)
@@ -137,7 +145,7 @@ def _jittered(random, count):
     return np.clip(np.floor(places / CELL_M) * CELL_M + CELL_M / 2, CELL_M / 2, None)
 
 
-def simulate(kind: str, separation: float, count: int, *, seed) -> Simulated:
+def simulate(kind: str, separation: float, count: int, *, seed: list[int]) -> Simulated:
     """One field of a kind with about ``count`` samples; same seed, same field."""
     random = np.random.default_rng(seed)
     boundary = shapely.box(EAST, NORTH, EAST + WIDE_M, NORTH + HIGH_M)
@@ -150,8 +158,8 @@ def simulate(kind: str, separation: float, count: int, *, seed) -> Simulated:
     )
     grid = lay_grid(boundary, cell_m=CELL_M)
     units, classes = _truth(random, kind, separation, grid.rows, grid.cols)
-    places = _jittered(random, count)
-    at = grid.cell_of(places + [EAST, NORTH])
+    places = _jittered(random, count) + np.array([EAST, NORTH])
+    at = grid.cell_of(places)
     truth, measured = {}, {}
     for name, layer in zip(LEVEL, units, strict=True):
         flat = layer[grid.inside]
@@ -161,7 +169,7 @@ def simulate(kind: str, separation: float, count: int, *, seed) -> Simulated:
         measured[name] = Measured(values=values, below_limit=np.zeros(len(at), bool))
     samples = SampleSet(
         ids=tuple(f"S{i + 1}" for i in range(len(at))),
-        east_north_m=places + [EAST, NORTH],
+        east_north_m=places,
         properties=measured,
         kind=("point",) * len(at),
         cores=np.full(len(at), 8),
@@ -187,7 +195,7 @@ def sample_need(samples: SampleSet) -> np.ndarray:
     return need_kg_ha(**{name: samples.properties[name].values for name in LEVEL})
 
 
-def cell_need(surfaces) -> CellNeed:
+def cell_need(surfaces: Mapping[str, Surface]) -> CellNeed:
     """Need of the cells and its standard deviation, from three surfaces."""
     estimate = {name: surfaces[name].estimate for name in LEVEL}
     sd = {
@@ -213,23 +221,23 @@ def cell_need(surfaces) -> CellNeed:
     )
 
 
-def outcome_of(need: CellNeed, cell_ha: float):
+def outcome_of(need: CellNeed, cell_ha: float) -> Outcome:
     """The plan's outcome as zoning asks for it: closed-form loss under the cap."""
 
-    def outcome(labels) -> PlanOutcome:
+    def outcome(labels: np.ndarray) -> PlanOutcome:
         rates, loss = plan_loss(labels, need.need_mean_kg_ha, need.need_sd_kg_ha, most=CAP_KG_HA)
         return PlanOutcome(rates_kg_ha=rates, loss_kg=loss * cell_ha)
 
     return outcome
 
 
-def true_loss(labels, need: CellNeed, true_need) -> float:
+def true_loss(labels: np.ndarray, need: CellNeed, true_need: np.ndarray) -> float:
     """What a plan really loses, kg B short plus in excess over all cells."""
     rates, _ = plan_loss(labels, need.need_mean_kg_ha, need.need_sd_kg_ha, most=CAP_KG_HA)
     return float(np.abs(rates[labels] - true_need).sum())
 
 
-def settings(**zoning) -> RunSettings:
+def settings(**zoning: Any) -> RunSettings:
     """A job with a 24 m spreader at 8 km/h."""
     return RunSettings(
         field_name="simulated",

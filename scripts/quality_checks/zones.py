@@ -5,6 +5,7 @@ python scripts/quality.py zones --fields 70         fewer fields
 python scripts/quality.py zones --samples 60        one sample number
 python scripts/quality.py zones --part decisions|composites|awkward
 python scripts/quality.py zones --seed 7            other fields (default 2026)
+python scripts/quality.py zones --minutes 20        stop each sample number after so long
 
 The generator stands in zone_simulation.py. Every field goes through the program's own mapping and
 zoning; the other rules choose among the same cluster maps of the same fields.
@@ -28,14 +29,15 @@ def main(argv: list[str]) -> int:
     parser.add_argument("--fields", type=int, default=630)
     parser.add_argument("--samples", type=int, choices=SAMPLE_NUMBERS)
     parser.add_argument("--part", choices=("decisions", "composites", "awkward"))
+    parser.add_argument("--minutes", type=float, default=1e9)
     parser.add_argument("--seed", type=int, default=2026)
     asked = parser.parse_args(argv)
     numbers = (asked.samples,) if asked.samples else SAMPLE_NUMBERS
     if asked.part in (None, "decisions"):
         for number in numbers:
-            decisions_report(number, asked.fields, seed=asked.seed)
+            decisions_report(number, asked.fields, seed=asked.seed, minutes=asked.minutes)
     if asked.part in (None, "composites"):
-        composites_report(min(asked.fields, 400), seed=asked.seed)
+        composites_report(min(asked.fields, 300), seed=asked.seed, minutes=asked.minutes)
     if asked.part in (None, "awkward"):
         awkward_report(min(asked.fields, 300), seed=asked.seed)
     return 0

@@ -68,16 +68,23 @@ def cluster_reason(
     classes: int | None,
 ) -> str:
     """Why so many zones: classes in the samples, or slices of a gradient that save enough."""
-    kind = (
-        f"the samples fall into {number_word(count)} discrete classes"
-        if classes == count
-        else "the soil changes gradually, and the zones are slices of a gradient"
-    )
     return (
         f"{number_word(count).capitalize()} zones: the boron need is patterned (p = {p:.3f}), "
         f"zones save {percent(saving)} of the loss of one flat rate ({between(low, high)}), "
-        f"and {kind}."
+        f"and {_kind(count, classes)}."
     )
+
+
+def _kind(count: int, classes: int | None) -> str:
+    """What the zones are, by the classes that the samples fall into."""
+    if classes is None:
+        return "there are too few complete samples to look for discrete classes in them"
+    if classes == 1:
+        return "the soil changes gradually, so the zones are slices of a gradient"
+    fall = f"the samples fall into {number_word(classes)} discrete classes"
+    if classes == count:
+        return fall
+    return f"{fall}, of which this number of zones is worth a rate each"
 
 
 def own_count_reason(count: int, *, p: float | None, saving: float, low: float, high: float) -> str:
