@@ -27,7 +27,10 @@ AXE = NODE / "node_modules" / "axe-core" / "axe.min.js"
 READY = "#map[data-ready=yes]"
 NASTY = "</script><script>document.title='taken'</script><img src=x onerror=\"document.title='x'\">"
 
-pytestmark = pytest.mark.skipif(CHROMIUM is None, reason="Debian's chromium is not installed")
+pytestmark = [
+    pytest.mark.skipif(CHROMIUM is None, reason="Debian's chromium is not installed"),
+    pytest.mark.filterwarnings("ignore::rasterio.errors.NotGeoreferencedWarning"),
+]
 
 
 @pytest.fixture(scope="module")
