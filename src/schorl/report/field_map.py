@@ -97,10 +97,6 @@ def _svg(record: RunRecord, shown: Shown, layers: tuple[Layer, ...], doubtful: D
         return shape("g", {"class": f"layer on-{key}"}, *parts)
 
     pictures = [layer(one.key, _picture(record.grid, one, sheet)) for one in layers]
-    outline = shape(
-        "g", {"class": "zonelines"}, zones_svg.zone_lines(record, sheet, width=3 * thin, colour="#fff"),
-        zones_svg.zone_lines(record, sheet, width=thin),
-    )  # fmt: skip
     parts = [
         shape("defs", {}, cut, zones_svg.patterns(sheet)),
         layer("rate", shape("g", {"id": "fill-rate"}, zones_svg.zone_fills(record, sheet, fills))),
@@ -109,7 +105,7 @@ def _svg(record: RunRecord, shown: Shown, layers: tuple[Layer, ...], doubtful: D
         ),
         *pictures,
         shape("g", {"class": "doubts"}, _doubt_paths(record, doubtful, sheet)),
-        outline,
+        _outline(record, sheet, thin),
         shape("g", {"id": "fieldline"}, map_svg.field_line(record, sheet, width=2.5 * thin)),
         shape("g", {"class": "samples"}, map_svg.sample_marks(record, sheet)),
         layer("rate", zones_svg.zone_labels(record, sheet, rates, fills, clear_of_m=places)),
@@ -125,6 +121,13 @@ def _svg(record: RunRecord, shown: Shown, layers: tuple[Layer, ...], doubtful: D
         "aria-label": f"Map of {record.settings.field_name}",
     }
     return shape("svg", attributes, *parts)
+
+
+def _outline(record: RunRecord, sheet: Sheet, thin: float) -> Safe:
+    return shape(
+        "g", {"class": "zonelines"}, zones_svg.zone_lines(record, sheet, width=3 * thin, colour="#fff"),
+        zones_svg.zone_lines(record, sheet, width=thin),
+    )  # fmt: skip
 
 
 def _picture(grid: CellGrid, layer: Layer, sheet: Sheet) -> Safe:

@@ -49,9 +49,11 @@ def rate_map_png(record: RunRecord) -> bytes:
     PNG, about 1,000 pixels wide; the same bytes from the same record.
     """
     shown = shown_of(record)
+    aside = any(zone.kind != "zone" for zone in record.prescription.zone_map.zones)
+    hatched = "; hatched: keep-off area or hot spot" if aside else ""
     facts = {
         "title": f"{record.settings.field_name}, {record.settings.season}",
-        "what": f"Rates of product in {shown.rate_unit}; hatched: keep-off area or hot spot",
+        "what": f"Rates of product in {shown.rate_unit}{hatched}",
         "words": what_to_do(record, shown),
         "decides": "The product label, local codes and a licensed adviser decide.",
         "map": rate_map_svg(record, shown),
