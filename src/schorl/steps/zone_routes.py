@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import cast
 
 import numpy as np
 import shapely
@@ -14,6 +15,7 @@ from schorl.model.field import Area
 from schorl.steps.zone_clusters import clustered_zones
 from schorl.steps.zone_land import Drawn, Land, count_figures, need_structure_p
 from schorl.zoning import reasons
+from schorl.zoning.cover import SLIVER_M2
 from schorl.zoning.sampled import (
     COVERED,
     composite_error_mg_kg,
@@ -69,7 +71,7 @@ def given_zones(land: Land, layer: Sequence[tuple[int, Area]], *, origin: str) -
     Refusal
         They cover less than half of the field (exit 4).
     """
-    areas = [shapely.make_valid(area) for _, area in layer]
+    numbers, areas = _by_number(layer, land.field.boundary)
     found = _layer_findings(land, areas)
     labels = np.where(land.use, _nearest_zone(areas, land.grid.centres_m), -1)
     saving = land.judge.saving(labels)
@@ -86,11 +88,23 @@ def given_zones(land: Land, layer: Sequence[tuple[int, Area]], *, origin: str) -
         reason=reasons.given_reason(len(areas), origin, saving=saving),
         lines=[shapely.boundary(area) for area in areas],
         label_of=lambda points: label_in(areas, points),
-        numbers=tuple(number for number, _ in layer),
+        numbers=numbers,
         structure_p=need_structure_p(land),
         table=count_figures(land, {1: 0.0, len(areas): saving}),
         findings=tuple(found),
     )
+
+
+def _by_number(
+    layer: Sequence[tuple[int, Area]], boundary: Area
+) -> tuple[tuple[int, ...], list[Area]]:
+    """Zones that lie on the field, all areas of one number together, in the layer's order."""
+    parts: dict[int, list[Area]] = {}
+    for number, area in layer:
+        valid = shapely.make_valid(area)
+        if shapely.intersection(valid, boundary).area > SLIVER_M2:
+            parts.setdefault(number, []).append(valid)
+    return tuple(parts), [cast("Area", shapely.union_all(some)) for some in parts.values()]
 
 
 def _layer_findings(land: Land, areas: Sequence[Area]) -> list[Finding]:
@@ -127,13 +141,13 @@ def sampled_zones(land: Land) -> Drawn:
     labels = np.where(land.use, _nearest_zone(areas, land.grid.centres_m), -1)
     p = differences_p(land.sample_need_kg_ha, composite_need_error(land, labels))
     saving = land.judge.saving(labels)
-    count = len(areas)
+    count = len(np.unique(labels[labels >= 0]))
     table = count_figures(land, {1: 0.0, count: saving})
     if p > GATE_P or saving < GATE_SAVING:
         reason = reasons.flat_reason(
             p=p,
             best=saving,
-            samples=count,
+            samples=len(areas),
             test="difference between the sample zones",
         )
         return Drawn(origin="one flat rate", reason=reason, structure_p=p, table=table)

@@ -321,3 +321,40 @@ def test_progress_is_told_and_ends():
     )
     assert told[0] == ("zones", 0, 3)
     assert told[-1] == ("zones", 3, 3)
+
+
+def test_areas_of_one_number_are_one_zone_and_zones_off_the_field_are_none():
+    corners = [(0, 0), (250, 0), (0, 200), (250, 200)]
+    boxes = [shifted(shapely.box(x, y, x + 250, y + 200)) for x, y in corners]
+    away = shifted(shapely.box(900, 0, 950, 50))
+    layer = ((4, boxes[0]), (2, boxes[1]), (4, boxes[3]), (2, boxes[2]), (6, away))
+    one = trial().with_zoning(own_layer=layer)
+    zones = one.draw().zone_map
+    assert sorted(zone.number for zone in zones.zones) == [2, 4]
+    assert zones.count == 2
+    assert zones.reason.startswith("Two zones")
+    assert exact(zones, one.field)
+
+
+def test_a_field_of_a_local_system_is_zoned_like_any_other():
+    """A field across the edge of two UTM zones is worked in a transverse Mercator of its own."""
+    from schorl.geodesy import area_ha, field_crs
+
+    crs = field_crs(12.0, 52.0, west=11.998, east=12.004)
+    assert crs.startswith("+proj=tmerc")
+    one = trial()
+    field = replace(one.field, crs=crs, epsg=None, area_ha=area_ha(one.field.boundary, crs=crs))
+    zones = replace(one, field=field).draw().zone_map
+    assert zones.count == 2
+    assert sum(zone.area_ha for zone in zones.zones) == pytest.approx(field.area_ha, rel=1e-9)
+
+
+def test_parts_of_a_field_that_do_not_touch_are_all_covered():
+    parts = shapely.union_all(
+        [shapely.box(0, 0, 240, 400), shapely.box(260, 0, 500, 400), shapely.box(510, 0, 530, 30)]
+    )
+    one = trial(shifted(parts))
+    zones = one.draw().zone_map
+    assert zones.count == 2
+    assert exact(zones, one.field)
+    assert sum(zone.area_ha for zone in zones.zones) == pytest.approx(one.field.area_ha)
