@@ -50,21 +50,19 @@ def test_readme_blocks_run_in_order(tmp_path):
     shutil.copytree(ROOT / "sample_fields", tmp_path / "sample_fields")
     blocks = re.findall(r"```console\n(.*?)```", text, flags=re.DOTALL)
     assert blocks
-    for block in blocks:
-        joined = block.replace("\\\n", " ")
-        for line in joined.splitlines():
-            if not line.startswith("$ schorl "):
-                continue
-            command = [sys.executable, "-m", *shlex.split(line[2:])]
-            done = subprocess.run(
-                command, cwd=tmp_path, capture_output=True, text=True, encoding="utf-8", check=False
-            )
-            wanted = int(match.group(1)) if (match := re.search(r"# exit (\d+)", line)) else 0
-            assert done.returncode == wanted, (line, done.stderr)
-            shown = [one for one in block.splitlines() if one and not one.startswith("$")]
-            said = done.stdout + done.stderr
-            for one in shown[:1]:
-                assert one.strip() in said or one.startswith(("    ", "...")), (one, said)
+    lines = [line for block in blocks for line in block.replace("\\\n", " ").splitlines() if line]
+    for place, line in enumerate(lines):
+        if not line.startswith("$ schorl "):
+            continue
+        command = [sys.executable, "-m", *shlex.split(line[2:], comments=True)]
+        done = subprocess.run(
+            command, cwd=tmp_path, capture_output=True, text=True, encoding="utf-8", check=False
+        )
+        wanted = int(match.group(1)) if (match := re.search(r"# exit (\d+)", line)) else 0
+        assert done.returncode == wanted, (line, done.stderr)
+        following = lines[place + 1] if place + 1 < len(lines) else "$"
+        if not following.startswith("$"):
+            assert following.strip() in done.stdout + done.stderr
 
 
 def test_job_keys_are_listed_for_contributors():

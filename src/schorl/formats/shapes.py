@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -66,7 +67,7 @@ def _rounded_together(exact: list[Any], decimals: int) -> list[Any] | None:
     finer grid of task data is taken.
     """
     width = 10.0**-decimals
-    attempts = [lambda: exact]
+    attempts: list[Callable[[], list[Any]]] = [lambda: exact]
     if hasattr(shapely, "coverage_clean"):
         attempts += [
             lambda: list(shapely.coverage_clean(exact, snapping_distance=width)),

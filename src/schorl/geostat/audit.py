@@ -53,9 +53,7 @@ def audit(
     return Audit(by=by, cells=count, largest_difference=largest)
 
 
-def _pykrige(
-    east_north_m: Floats, values: Floats, points: Floats, variogram: Variogram
-) -> Floats:
+def _pykrige(east_north_m: Floats, values: Floats, points: Floats, variogram: Variogram) -> Floats:
     from pykrige.ok import OrdinaryKriging
 
     about = east_north_m.mean(axis=0)
@@ -113,4 +111,3 @@ def _dense(
         shared[:count, place] = variogram.partial_sill * layout.averaged(pairs).mean(axis=1)
     weights = np.linalg.solve(bordered, shared)[:count]
     return np.asarray(weights.T @ values)
-

@@ -61,12 +61,16 @@ def complete(
     for _ in range(REFITS):
         fit = fit_reml(east_north_m, current, family=family, lab_sd=lab_sd, support=support)
         fits.append(fit)
-        current = _sweeps(east_north_m, current, below_limit, limits, fit, random, support)
+        current = _sweeps(
+            east_north_m, current, below_limit, limits, fit=fit, random=random, support=support
+        )
         family = fit.family
     fit = fits[-1]
     draws = np.empty((len(values), DRAWS))
     for place in range(DRAWS):
-        current = _sweeps(east_north_m, current, below_limit, limits, fit, random, support)
+        current = _sweeps(
+            east_north_m, current, below_limit, limits, fit=fit, random=random, support=support
+        )
         draws[:, place] = current
     return Completed(draws=draws, fit=fit)
 
@@ -76,6 +80,7 @@ def _sweeps(
     current: Floats,
     below: np.ndarray,
     limits: Floats,
+    *,
     fit: VariogramFit,
     random: np.random.Generator,
     support: Sequence[Support] | None,

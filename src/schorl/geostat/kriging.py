@@ -99,9 +99,7 @@ def krige(
         elif len(columns) > GLOBAL_UP_TO and neighbours is None and layout.all_points:
             from schorl.geostat.neighbourhoods import krige_tiled
 
-            estimate, variance = krige_tiled(
-                layout, columns, targets, variogram, filtered=filtered
-            )
+            estimate, variance = krige_tiled(layout, columns, targets, variogram, filtered=filtered)
         else:
             estimate, variance = krige_global(
                 layout, columns, targets, variogram, filtered=filtered

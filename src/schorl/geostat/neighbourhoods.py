@@ -107,7 +107,7 @@ def krige_tiled(
     for east in (0, 1):
         for north in (0, 1):
             weight = np.abs(1 - east - share[:, 0]) * np.abs(1 - north - share[:, 1])
-            lattice = corner + (east, north)
+            lattice = corner + np.array([east, north])
             _add_layer(
                 layout, columns, targets, variogram, tree,
                 lattice=lattice, node_m=origin + lattice * side, weight=weight,

@@ -200,9 +200,7 @@ def _search(
     layout: Layout, values: Floats, family: Family, *, priors: bool, longest_m: float
 ) -> _Best:
     """Grid over ranges (profiles of the spherical have several maxima), then polish the best."""
-    profile = Profile(
-        layout, values[:, None], family=family, priors=priors, longest_m=longest_m
-    )
+    profile = Profile(layout, values[:, None], family=family, priors=priors, longest_m=longest_m)
     grid = np.geomspace(SHORTEST, LONGEST, GRID_RANGES) * longest_m
     heights = np.array([profile.peak(one).objective for one in grid])
     best_range, best_height = float(grid[heights.argmax()]), float(heights.max())
@@ -346,9 +344,7 @@ def _anisotropic(
         method="Nelder-Mead",
         options={"xatol": 1e-2, "fatol": 1e-3, "maxfev": 60},
     )
-    polished = at(
-        float(np.exp(abs(done.x[0]))), float(done.x[1] % 180.0), float(np.exp(done.x[2]))
-    )
+    polished = at(float(np.exp(abs(done.x[0]))), float(done.x[1] % 180.0), float(np.exp(done.x[2])))
     likelihood, best = max([(likelihood, best), polished], key=lambda one: one[0])
     gained = likelihood - fit.log_likelihood > np.log(len(values))
     return best if gained and best.stretch < 6.0 else fit

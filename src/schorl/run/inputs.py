@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TypeVar
@@ -86,9 +87,14 @@ def _fingerprints(paths: dict[str, Path]) -> dict[str, str]:
     return {name: sha256_of(path) for name, path in sorted(paths.items()) if path.is_file()}
 
 
+def beside(folder: Path, given: str) -> Path:
+    """A path as a job in ``folder`` names it, also where the folder is still to be made."""
+    return Path(os.path.normpath(folder / given))
+
+
 def located(folder: Path, given: str, notes: Notebook) -> Path | None:
     """A path of the job, or None with a finding where nothing is there."""
-    path = folder / given
+    path = beside(folder, given)
     if not path.exists():
         notes.findings.append(
             finding("JOB-INPUT", where="job", what=f"there is no file `{given}` in {folder}")
@@ -123,7 +129,7 @@ def hints_of(job: Job, folder: Path) -> SampleHints:
     plain = part.model_dump(exclude={"file", "lab_relative_sd_pct", "zone_layer", "strike_out"})
     return SampleHints(
         lab_relative_sd=relative_sd,
-        zone_layer=folder / part.zone_layer if part.zone_layer else None,
+        zone_layer=beside(folder, part.zone_layer) if part.zone_layer else None,
         strike_out=tuple(part.strike_out),
         confirmed=tuple(job.crop.confirmed_high),
         **plain,
@@ -146,9 +152,7 @@ def read_sample_set(job: Job, folder: Path, field: Field, notes: Notebook) -> Sa
         samples = notes.take(read_samples(path, field=field, hints=hints))
     if samples is None:
         raise Refusal(notes.findings)
-    notes.findings.extend(
-        check_samples(samples, field, confirmed=tuple(job.crop.confirmed_high))
-    )
+    notes.findings.extend(check_samples(samples, field, confirmed=tuple(job.crop.confirmed_high)))
     return samples
 
 

@@ -71,7 +71,9 @@ def clustered_zones(land: Land) -> Drawn:
     )
     if not asked and (saving < GATE_SAVING or left < 2):
         return _flat(land, case, best=saving)
-    return _zoned(land, case, shaped, shares, saving=saving, left=left)
+    return _zoned(
+        land, case, shaped, np.asarray(shares, dtype=np.float64), saving=saving, left=left
+    )
 
 
 def _case(land: Land) -> _Case:
