@@ -358,3 +358,15 @@ def test_parts_of_a_field_that_do_not_touch_are_all_covered():
     assert zones.count == 2
     assert exact(zones, one.field)
     assert sum(zone.area_ha for zone in zones.zones) == pytest.approx(one.field.area_ha)
+
+
+def test_a_pattern_finer_than_the_machine_gets_one_rate():
+    """Stripes of 12 m save much as clusters, and nothing once a 24 m machine must follow them."""
+    one = trial(
+        boron_of=lambda e, n: 0.3 + 0.4 * ((n * 400 // 12) % 2), clay_of=lambda e, n: 20 + 0 * e
+    )
+    one = replace(one, sample_need=one.samples.east_north_m[:, 0] - 400_000.0)
+    zones = one.draw().zone_map
+    assert zones.structure_p < 0.01
+    assert zones.table[1].saving > 0.3
+    assert zones.count == 1

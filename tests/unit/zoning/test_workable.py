@@ -111,3 +111,12 @@ def test_strips_under_the_least_area_are_joined_though_long_enough():
     best = np.repeat([0, 1], [10, 6])
     totals = np.stack([best == 0, best == 1]).astype(float)
     assert set(strips(totals, np.full(16, 2), least_run=5, least_cells=15)) == {0}
+
+
+def test_a_region_still_small_after_taking_a_neighbour_merges_again():
+    labels = np.zeros((10, 10), np.int16)
+    labels[0:2, 0:2], labels[0:2, 2:4] = 1, 2
+    layers = np.zeros((3, 10, 10))
+    layers[1, 0:2, 0:2] = layers[2, 0:2, 2:4] = 1.0  # each its own
+    layers[2, 0:2, 0:2] = layers[1, 0:2, 2:4] = 0.5  # and each other's before the large one's
+    assert (merge_small(labels, layers, 10) == 0).all()

@@ -71,9 +71,11 @@ def test_few_samples_or_none_say_nothing():
     assert discrete_classes(np.empty((60, 0)), seed=0) is None
 
 
-def test_rounded_values_do_not_become_classes():
-    random = np.random.default_rng(5)
-    rounded = np.round(random.normal(0.6, 0.12, 60), 1)
+@pytest.mark.parametrize("seed", range(4))
+def test_rounded_values_do_not_become_classes(seed):
+    """Boron told in steps of 0.2: without spreading them the steps count as three to five."""
+    random = np.random.default_rng(seed)
+    rounded = np.round(random.normal(0.6, 0.12, 60) / 0.2) * 0.2
     table = sample_table([rounded, random.normal(20, 3, 60)], seed=0)
     assert discrete_classes(table, seed=0) == 1
 
