@@ -370,3 +370,5 @@ def test_a_pattern_finer_than_the_machine_gets_one_rate():
     assert zones.structure_p < 0.01
     assert zones.table[1].saving > 0.3
     assert zones.count == 1
+    assert zones.origin == "one flat rate"
+    assert "not worth their risk" in zones.reason
