@@ -85,7 +85,6 @@ FACTS: tuple[tuple[str, str, Any, str], ...] = (
     ("--keep-zones-of", "zoning.keep_zones_of", FILE, "Earlier pack whose zones are kept."),
     ("--cell-m", "cell_m", float, "Cell size [a quarter of the working width]."),
     ("--units", "units", click.Choice(["metric", "us"]), "Units on report and sheet [metric]."),
-    ("--profile", "profile", str, "Controller profile: a shipped name or a TOML file."),
     ("--seed", "seed", int, "Seed of everything random [0]."),
     ("--field", "field", str, "Name of the field."),
     ("--season", "season", str, "Season, e.g. 2026 [undated]."),

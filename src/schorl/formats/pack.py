@@ -72,7 +72,6 @@ def write_pack(
     *,
     extras: Mapping[str, bytes],
     replace: bool,
-    profile: Mapping[str, object] | None = None,
 ) -> PackWritten:
     """Write a whole pack into ``folder``.
 

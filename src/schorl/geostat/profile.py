@@ -16,8 +16,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from schorl.geostat.covariance import distances
 from schorl.geostat.support import Layout, structured_matrix
 from schorl.model.arrays import Floats
+from schorl.model.variogram import Family
 
 #: Weak priors (a proposal of this program): log range ~ N(log(D/6), 1), logit share ~ N(0.8, 1.5).
 RANGE_PRIOR_SD = 1.0
@@ -50,7 +52,7 @@ class Profile:
     """Likelihood of one or more columns of values over range and share."""
 
     def __init__(
-        self, layout: Layout, columns: Floats, *, family: str, priors: bool, longest_m: float
+        self, layout: Layout, columns: Floats, *, family: Family, priors: bool, longest_m: float
     ) -> None:
         self.layout = layout
         self.family = family
@@ -59,12 +61,13 @@ class Profile:
         self.count = len(layout.starts)
         self.basis = contrasts(self.count)
         self.projected = self.basis.T @ columns
+        self.gaps_m = distances(layout.points_m, layout.points_m)
         self._decomposed: dict[float, tuple[Floats, Floats]] = {}
 
     def decompose(self, range_m: float) -> tuple[Floats, Floats]:
         """Eigenvalues ``(n-1,)`` and squared scores ``(n-1, columns)`` at a range."""
         if range_m not in self._decomposed:
-            matrix = structured_matrix(self.layout, self.family, range_m)
+            matrix = structured_matrix(self.layout, self.family, range_m, gaps_m=self.gaps_m)
             values, vectors = np.linalg.eigh(self.basis.T @ matrix @ self.basis)
             scores = vectors.T @ self.projected
             self._decomposed[range_m] = (np.maximum(values, 0.0), scores * scores)

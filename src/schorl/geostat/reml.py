@@ -86,7 +86,11 @@ def fit_reml(
     if excuse:
         return _flat_fit(values, lab_variance, excuse)
     with one_blas_thread():
-        fit = _fit(layout, values, family=family, priors=priors, lab_variance=lab_variance)
+        (fit,) = _fits(layout, values[:, None], family=family, priors=priors, lab=(lab_variance,))
+    return _with_bins(fit, east_north_m, values)
+
+
+def _with_bins(fit: VariogramFit, east_north_m: Floats, values: Floats) -> VariogramFit:
     lag, gamma, pairs = empirical_variogram(np.asarray(east_north_m, float), values)
     return replace(fit, lag_m=lag, semivariance=gamma, pairs=pairs)
 
@@ -104,14 +108,40 @@ def best_transform(
     ((n-1)/n) sum(log value): REML has n - 1 degrees of freedom, and with this Jacobian a change of
     unit moves both sides alike. A value at or below zero leaves only "identity".
     """
+    transform, _ = fit_best_transform(values, east_north_m, priors=priors, support=support)
+    return transform
+
+
+def fit_best_transform(
+    values: Floats,
+    east_north_m: Floats,
+    *,
+    priors: bool = True,
+    lab_sd: tuple[float, float] = (0.0, 0.0),
+    support: Sequence[Support] | None = None,
+) -> tuple[str, VariogramFit]:
+    """The transform of ``best_transform`` with the fit it was chosen by.
+
+    Both scales share the decompositions of the sample layout. ``lab_sd`` is the laboratory
+    standard deviation on the scale of the values and on that of their logarithms.
+    """
     values = np.asarray(values, dtype=np.float64)
-    if len(values) < 4 or values.min() <= 0 or np.ptp(values) == 0:
-        return "identity"
-    plain = fit_reml(east_north_m, values, priors=priors, support=support)
-    logs = fit_reml(east_north_m, np.log(values), priors=priors, support=support)
-    count = len(values)
-    jacobian = (count - 1) / count * float(np.log(values).sum())
-    return "log" if logs.log_likelihood - jacobian > plain.log_likelihood else "identity"
+    layout = layout_of(east_north_m, support)
+    excuse = _no_pattern_excuse(layout, values)
+    lab = (lab_sd[0] ** 2, lab_sd[1] ** 2)
+    if excuse:
+        return "identity", _flat_fit(values, lab[0], excuse)
+    both = values.min() > 0
+    columns = np.column_stack([values, np.log(values)]) if both else values[:, None]
+    with one_blas_thread():
+        fits = _fits(layout, columns, family=None, priors=priors, lab=lab[: columns.shape[1]])
+    chosen = 0
+    if both:
+        count = len(values)
+        jacobian = (count - 1) / count * float(np.log(values).sum())
+        chosen = int(fits[1].log_likelihood - jacobian > fits[0].log_likelihood)
+    fit = _with_bins(fits[chosen], east_north_m, columns[:, chosen])
+    return ("identity", "log")[chosen], fit
 
 
 def _no_pattern_excuse(layout: Layout, values: Floats) -> str:
@@ -139,13 +169,38 @@ def _flat_fit(values: Floats, lab_variance: float, reason: str) -> VariogramFit:
     )
 
 
-def _fit(
-    layout: Layout, values: Floats, *, family: Family | None, priors: bool, lab_variance: float
-) -> VariogramFit:
-    subset, kept = _thinned(layout, values)
-    tried = [family] if family else list(FAMILIES)
+def _fits(
+    layout: Layout,
+    columns: Floats,
+    *,
+    family: Family | None,
+    priors: bool,
+    lab: tuple[float, ...],
+) -> list[VariogramFit]:
+    """A fit for each column of values; all share the decompositions of the layout."""
+    subset, kept = _thinned(layout, columns)
+    tried: list[Family] = [family] if family else list(FAMILIES)
     longest = _longest(subset)
-    found = [_search(subset, kept, one, priors=priors, longest_m=longest) for one in tried]
+    profiles = [
+        Profile(subset, kept, family=one, priors=priors, longest_m=longest) for one in tried
+    ]
+    return [
+        _fit(subset, kept[:, place], profiles, column=place, lab_variance=lab[place],
+             refine=priors and family is None)
+        for place in range(columns.shape[1])
+    ]  # fmt: skip
+
+
+def _fit(
+    subset: Layout,
+    values: Floats,
+    profiles: Sequence[Profile],
+    *,
+    column: int,
+    lab_variance: float,
+    refine: bool,
+) -> VariogramFit:
+    found = [_search(profile, column) for profile in profiles]
     best = max(found, key=lambda one: one.peak.objective)
     nugget = (1.0 - best.peak.share) * best.peak.total_variance
     sill = best.peak.share * best.peak.total_variance
@@ -153,20 +208,21 @@ def _fit(
     likelihood = best.peak.log_likelihood
     if not subset.equal_cores:
         start, likelihood = _unequal(
-            subset, kept, best, priors=priors, longest_m=longest, lab_variance=lab_variance
-        )
+            subset, values, best, priors=profiles[0].priors, longest_m=profiles[0].longest_m,
+            lab_variance=lab_variance,
+        )  # fmt: skip
     fit = VariogramFit(
         family=best.family,
         nugget=start[0],
         partial_sill=start[1],
         practical_range_m=start[2],
-        mean=_mean(subset, kept, best.family, start, lab_variance),
+        mean=_mean(subset, values, best.family, start, lab_variance),
         log_likelihood=likelihood,
         verdict="pattern found",
         lab_variance=min(lab_variance, start[0]),
     )
-    if len(kept) >= ANISOTROPY_FROM and priors and family is None:
-        fit = _anisotropic(subset, kept, fit, lab_variance)
+    if len(values) >= ANISOTROPY_FROM and refine:
+        fit = _anisotropic(subset, values, fit, lab_variance)
     return _judged(fit)
 
 
@@ -196,25 +252,23 @@ def _longest(layout: Layout) -> float:
     return float(pdist(centres).max(initial=0.0)) or float(np.ptp(layout.points_m, axis=0).max())
 
 
-def _search(
-    layout: Layout, values: Floats, family: Family, *, priors: bool, longest_m: float
-) -> _Best:
+def _search(profile: Profile, column: int) -> _Best:
     """Grid over ranges (profiles of the spherical have several maxima), then polish the best."""
-    profile = Profile(layout, values[:, None], family=family, priors=priors, longest_m=longest_m)
+    longest_m = profile.longest_m
     grid = np.geomspace(SHORTEST, LONGEST, GRID_RANGES) * longest_m
-    heights = np.array([profile.peak(one).objective for one in grid])
+    heights = np.array([profile.peak(one, column).objective for one in grid])
     best_range, best_height = float(grid[heights.argmax()]), float(heights.max())
     for place in _maxima(heights):
         low, high = grid[max(place - 1, 0)], grid[min(place + 1, len(grid) - 1)]
         polished = minimize_scalar(
-            lambda log_range: -profile.peak(float(np.exp(log_range))).objective,
+            lambda log_range: -profile.peak(float(np.exp(log_range)), column).objective,
             bounds=(np.log(low), np.log(high)),
             method="bounded",
             options={"xatol": 1e-6, "maxiter": 40},
         )
         if -polished.fun > best_height:
             best_range, best_height = float(np.exp(polished.x)), float(-polished.fun)
-    return _Best(family=family, range_m=best_range, peak=profile.peak(best_range))
+    return _Best(family=profile.family, range_m=best_range, peak=profile.peak(best_range, column))
 
 
 def _maxima(heights: Floats, *, most: int = 3) -> list[int]:

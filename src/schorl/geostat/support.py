@@ -112,15 +112,17 @@ def layout_of(east_north_m: Floats, support: Sequence[Support] | None) -> Layout
     )
 
 
-def structured_matrix(layout: Layout, family: str, practical_range_m: float) -> Floats:
+def structured_matrix(
+    layout: Layout, family: str, practical_range_m: float, *, gaps_m: Floats | None = None
+) -> Floats:
     """Correlation between samples ``(n, n)``, core scatter of zones on the diagonal.
 
     Multiplied by the partial sill it is the structured part of the data covariance. A zone's mean
-    correlation with itself leaves pairs of a point with itself out.
+    correlation with itself leaves pairs of a point with itself out. ``gaps_m`` are the distances
+    between all support points where they are at hand.
     """
-    between = correlation_in_place(
-        distances(layout.points_m, layout.points_m), family, practical_range_m
-    )
+    gap = distances(layout.points_m, layout.points_m) if gaps_m is None else gaps_m.copy()
+    between = correlation_in_place(gap, family, practical_range_m)
     if layout.all_points:
         return between
     matrix = layout.averaged(layout.averaged(between).T)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass, field
 from datetime import date
 from enum import StrEnum
@@ -190,4 +189,3 @@ class RunSettings:
     made_on: date | None = None
     prepared_by: str = ""
     overrides: tuple[Override, ...] = ()
-    profile: Mapping[str, object] = field(default_factory=dict)

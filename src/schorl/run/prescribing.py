@@ -171,8 +171,6 @@ def write_record(
     progress("report", 2, 3)
     extras["rate_map.png"] = rate_map_png(record)
     progress("files", 0, 1)
-    written = write_pack(
-        record, folder, extras=extras, replace=replace_old, profile=record.settings.profile
-    )
+    written = write_pack(record, folder, extras=extras, replace=replace_old)
     progress("files", 1, 1)
     return written

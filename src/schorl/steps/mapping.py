@@ -11,9 +11,10 @@ import shapely
 
 from schorl.errors import OwnFault, Refusal
 from schorl.findings import Finding, finding
-from schorl.geostat import Support, VariogramFit, best_transform, fit_reml, krige, leave_one_out
+from schorl.geostat import Support, VariogramFit, fit_reml, krige, leave_one_out
 from schorl.geostat.audit import TOLERANCE, audit
 from schorl.geostat.censored import complete, pooled
+from schorl.geostat.reml import fit_best_transform
 from schorl.geostat.support import layout_of, log_mean_shift
 from schorl.model.arrays import Floats
 from schorl.model.field import CellGrid
@@ -186,38 +187,42 @@ class _Fitted:
 
 
 def _fitted(data: _Data, random: np.random.Generator) -> _Fitted:
-    transform = _transform(data)
-    values = np.log(data.values) if transform == "log" else data.values
-    lab_sd = _lab_sd(data, transform)
     if data.below.any() and (~data.below).sum() >= LEAST_SAMPLES:
-        done = complete(
-            data.places, values, data.below, random=random, lab_sd=lab_sd, support=data.support
-        )
-        return _Fitted(
-            fit=replace(done.fit, transform=transform), draws=done.draws, transform=transform
-        )
-    fit = fit_reml(data.places, values, lab_sd=lab_sd, support=data.support)
+        return _completed(data, random)
+    scales = (_lab_sd(data, "identity"), _lab_sd(data, "log"))
+    transform, fit = fit_best_transform(
+        data.values, data.places, lab_sd=scales, support=data.support
+    )
+    values = np.log(data.values) if transform == "log" else data.values
     shifted = values
     if transform == "log" and data.support is not None:
+        layout = layout_of(data.places, data.support)
         for _ in range(2):  # the log of a mean is not the mean of logs
-            layout = layout_of(data.places, data.support)
             shifted = values - log_mean_shift(layout, fit.variogram)
-            fit = fit_reml(data.places, shifted, lab_sd=lab_sd, support=data.support)
+            fit = fit_reml(
+                data.places, shifted, family=fit.family, lab_sd=scales[1], support=data.support
+            )
     return _Fitted(
         fit=replace(fit, transform=transform), draws=shifted[:, None], transform=transform
     )
 
 
-def _transform(data: _Data) -> str:
-    sure = ~data.below
-    if sure.sum() < LEAST_SAMPLES or data.values.min() <= 0:
-        return "identity"
-    if data.below.any() and data.name == "boron":
-        return "log"  # the lower tail is cut off, so likelihoods cannot be compared
-    support = None
-    if data.support is not None:
-        support = [one for one, keep in zip(data.support, sure, strict=True) if keep]
-    return best_transform(data.values[sure], data.places[sure], support=support)
+def _completed(data: _Data, random: np.random.Generator) -> _Fitted:
+    """A fit with drawn values below the limit.
+
+    Boron's lower tail is cut off there, so likelihoods of the two scales cannot be compared: it is
+    taken as lognormal, as positive soil tests mostly are.
+    """
+    log = data.name == "boron" and data.values.min() > 0
+    transform = "log" if log else "identity"
+    values = np.log(data.values) if log else data.values
+    done = complete(
+        data.places, values, data.below, random=random, lab_sd=_lab_sd(data, transform),
+        support=data.support,
+    )  # fmt: skip
+    return _Fitted(
+        fit=replace(done.fit, transform=transform), draws=done.draws, transform=transform
+    )
 
 
 def _lab_sd(data: _Data, transform: str) -> float:

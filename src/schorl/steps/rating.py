@@ -284,6 +284,11 @@ def _findings(prescription: Prescription, need: CellNeed, settings: RunSettings)
         worst = max(rate.doubled_pass_mg_kg for rate in doubled)
         what = f"a doubled pass would bring soil boron to {worst:.1f} mg/kg, over the ceiling"
         found.append(finding("RATE-DOUBLED", where=_zones_named(doubled), what=what))
+    warn = limit("cap-foliar-warn")
+    strong = [rate for rate in treated if rate.boron_kg_ha > warn + 1e-9]
+    if strong and settings.placement is Placement.FOLIAR:
+        what = f"more than {warn:g} kg B/ha in one pass on leaves"
+        found.append(finding("RATE-FOLIAR", where=_zones_named(strong), what=what))
     few = [rate for rate in treated if rate.samples < FEW_SAMPLES]
     if few and prescription.zone_map.origin != "sample zones":
         what = f"fewer than {FEW_SAMPLES} samples lie in it"
