@@ -123,3 +123,25 @@ class Profile:
         if not self.priors:
             shares = np.where(logits <= -EDGE, 0.0, np.where(logits >= EDGE, 1.0, shares))
         return shares
+
+
+def restricted_log_likelihood(covariance: Floats, values: Floats) -> float:
+    """Restricted log-likelihood of values ``(n,)`` under a covariance ``(n, n)``, mean unknown.
+
+    -1/2 [(n-1) log(2 pi) + log|V| + log(1'V⁻¹1) + (z-m)'V⁻¹(z-m)]; -inf where V is singular.
+    """
+    try:
+        lower = np.linalg.cholesky(covariance)
+    except np.linalg.LinAlgError:
+        return -np.inf
+    both = np.linalg.solve(lower, np.column_stack([np.ones(len(values)), values]))
+    ones, scores = both[:, 0], both[:, 1]
+    weight = float(ones @ ones)
+    residual = scores - ones * float(ones @ scores) / weight
+    count = len(values)
+    return -0.5 * float(
+        (count - 1) * np.log(2.0 * np.pi)
+        + 2.0 * float(np.log(np.diag(lower)).sum())
+        + np.log(weight)
+        + float(residual @ residual)
+    )

@@ -15,7 +15,7 @@ import numpy as np
 from scipy.optimize import minimize, minimize_scalar
 
 from schorl.geostat.covariance import empirical_variogram
-from schorl.geostat.profile import Peak, Profile
+from schorl.geostat.profile import Peak, Profile, restricted_log_likelihood
 from schorl.geostat.support import Layout, layout_of, noise_of, structured_matrix
 from schorl.geostat.threads import one_blas_thread
 from schorl.model.arrays import Floats
@@ -276,28 +276,6 @@ def _maxima(heights: Floats, *, most: int = 3) -> list[int]:
     padded = np.concatenate([[-np.inf], heights, [-np.inf]])
     tops = np.flatnonzero((padded[1:-1] >= padded[:-2]) & (padded[1:-1] >= padded[2:]))
     return [int(one) for one in tops[np.argsort(-heights[tops])][:most]]
-
-
-def restricted_log_likelihood(covariance: Floats, values: Floats) -> float:
-    """Restricted log-likelihood of values ``(n,)`` under a covariance ``(n, n)``, mean unknown.
-
-    -1/2 [(n-1) log(2 pi) + log|V| + log(1'V⁻¹1) + (z-m)'V⁻¹(z-m)]; -inf where V is singular.
-    """
-    try:
-        lower = np.linalg.cholesky(covariance)
-    except np.linalg.LinAlgError:
-        return -np.inf
-    both = np.linalg.solve(lower, np.column_stack([np.ones(len(values)), values]))
-    ones, scores = both[:, 0], both[:, 1]
-    weight = float(ones @ ones)
-    residual = scores - ones * float(ones @ scores) / weight
-    count = len(values)
-    return -0.5 * float(
-        (count - 1) * np.log(2.0 * np.pi)
-        + 2.0 * float(np.log(np.diag(lower)).sum())
-        + np.log(weight)
-        + float(residual @ residual)
-    )
 
 
 def _unequal(

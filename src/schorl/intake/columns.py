@@ -4,15 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING
 
+from schorl.intake.draft import Draft
 from schorl.intake.headers import Column, method_in, recognise
 from schorl.intake.lab_tables import Table
 from schorl.intake.quantities import plain_words, read_cell
 from schorl.model.reading import SampleHints
-
-if TYPE_CHECKING:
-    from schorl.intake.samples import Draft
 
 CM_PER_INCH = 2.54
 PLACES = ("sample", "longitude", "latitude", "east", "north", "depth", "cores")

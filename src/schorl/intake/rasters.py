@@ -82,7 +82,7 @@ def _points(path: Path, field: Field, column: str | None) -> tuple[np.ndarray, n
 
 
 def _table_points(path: Path, field: Field, column: str | None) -> tuple[np.ndarray, np.ndarray]:
-    from schorl.intake.samples import Draft
+    from schorl.intake.draft import Draft
 
     table = read_table(path, layer=None)
     chosen = choose_columns(table, SampleHints(), Draft(source=path.name))

@@ -2,25 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any
 
 import numpy as np
-import shapely
 
-from schorl.findings import Finding, finding
-from schorl.geodesy import WGS84, transform_geometry, transform_points
 from schorl.intake.columns import Chosen, choose_columns, pivoted
+from schorl.intake.draft import Draft
 from schorl.intake.guards import Unreadable
 from schorl.intake.lab_tables import TABLE_SUFFIXES, Table, read_table
+from schorl.intake.places import places_of
 from schorl.intake.quantities import SLICE_CM, plain_words, read_cell
+from schorl.intake.repeats import averaged
 from schorl.intake.values import measured_values
 from schorl.intake.vectors import Features, read_features
-from schorl.model.field import Area, Field
+from schorl.model.field import Field
 from schorl.model.reading import Reading, SampleHints
-from schorl.model.record import Recognition
 from schorl.model.samples import Campaign, Measured, SampleSet
 
 POINT_CORES, ZONE_CORES = 8, 15
@@ -28,29 +24,6 @@ MEASURABLE = (
     "boron", "organic_matter", "clay", "sand", "ph", "bulk_density", "stones", "calcium",
     "total_boron",
 )  # fmt: skip
-
-
-@dataclass
-class Draft:
-    """What is known so far while a file is read; findings are gathered, not raised."""
-
-    source: str
-    findings: list[Finding] = field(default_factory=list)
-    recognised: list[Recognition] = field(default_factory=list)
-
-    def note(self, code: str, what: str, hint: str = "", *, where: str = "") -> None:
-        """Add a finding about the file or a place in it."""
-        place = f"{self.source}, {where}" if where else self.source
-        self.findings.append(finding(code, where=place, what=what, hint=hint))
-
-    def saw(self, what: str, where: str, how: str) -> None:
-        """Add a recognition."""
-        self.recognised.append(Recognition(what=what, where=f"{self.source}, {where}", how=how))
-
-    @property
-    def broken(self) -> bool:
-        """Whether an error was found."""
-        return any(one.stops for one in self.findings)
 
 
 def read_samples(path: Path, *, field: Field, hints: SampleHints) -> Reading[SampleSet]:
@@ -87,7 +60,7 @@ def _read(path: Path, field: Field, hints: SampleHints, draft: Draft) -> SampleS
         draft.note("IN-NO-ROWS", "no sample is left to read")
         return None
     ids = _ids(table, chosen, rows, draft)
-    places = _places(
+    places = places_of(
         table, chosen, rows, ids, features=features, field=field, hints=hints, draft=draft
     )
     campaign = _campaign(table, chosen, hints, draft)
@@ -95,7 +68,7 @@ def _read(path: Path, field: Field, hints: SampleHints, draft: Draft) -> SampleS
     if draft.broken or places is None or campaign is None:
         return None
     cores = _cores(table, chosen, rows, places.kind, hints)
-    return _averaged(
+    return averaged(
         SampleSet(
             ids=ids,
             east_north_m=places.east_north_m,
@@ -173,188 +146,6 @@ def _ids(table: Table, chosen: Chosen, rows: list[int], draft: Draft) -> tuple[s
             "name each sample once, or choose the depth or analysis that is meant",
         )
     return tuple(names)
-
-
-@dataclass(frozen=True, kw_only=True)
-class Places:
-    """Where samples are: points in metres, their kind, areas of sample zones."""
-
-    east_north_m: np.ndarray
-    kind: tuple[str, ...]
-    areas: tuple[Area | None, ...]
-
-
-def _places(
-    table: Table,
-    chosen: Chosen,
-    rows: list[int],
-    ids: tuple[str, ...],
-    *,
-    features: Features | None,
-    field: Field,
-    hints: SampleHints,
-    draft: Draft,
-) -> Places | None:
-    if features is not None:
-        return _from_features(features, rows, ids, field, draft)
-    if hints.zone_layer is not None:
-        return _from_zone_layer(hints, ids, field, draft)
-    pairs = [
-        (chosen.longitude, chosen.latitude, WGS84),
-        (chosen.east, chosen.north, hints.crs),
-    ]
-    for first, second, system in pairs:
-        if first is None or second is None:
-            continue
-        return _from_columns(
-            table,
-            (first, second),
-            rows,
-            ids,
-            system=system,
-            field=field,
-            hints=hints,
-            draft=draft,
-        )
-    draft.note(
-        "IN-NO-PLACE",
-        "no columns of coordinates were understood",
-        'name them with `--column longitude="..." --column latitude="..."` or `east` and `north`, '
-        "or join sample zones with `--zone-layer FILE`",
-    )
-    return None
-
-
-def _from_features(
-    features: Features, rows: list[int], ids: tuple[str, ...], field: Field, draft: Draft
-) -> Places | None:
-    kinds, areas, points = [], [], []
-    for place, name in zip(rows, ids, strict=True):
-        geometry = features.geometries[place]
-        if geometry is None or geometry.is_empty:
-            draft.note("IN-NO-PLACE", "the sample has no geometry", where=name)
-            continue
-        moved = transform_geometry(geometry, source=features.crs, target=field.crs)
-        kind, area, point = _placed(moved)
-        if point is None:
-            draft.note("IN-NOT-PLACE", f"a {geometry.geom_type} is no sample place", where=name)
-            continue
-        kinds.append(kind)
-        areas.append(area)
-        points.append(point)
-    if draft.broken:
-        return None
-    draft.saw("places", "geometries", f"{sorted(set(kinds))[0]} samples, {features.crs_said}")
-    return Places(east_north_m=np.array(points), kind=tuple(kinds), areas=tuple(areas))
-
-
-def _placed(geometry: Any) -> tuple[str, Area | None, tuple[float, float] | None]:
-    if geometry.geom_type == "MultiPoint" and len(geometry.geoms) == 1:
-        geometry = geometry.geoms[0]
-    if geometry.geom_type == "Point":
-        return "point", None, (geometry.x, geometry.y)
-    if geometry.geom_type in ("Polygon", "MultiPolygon"):
-        if not geometry.is_valid:
-            geometry = shapely.make_valid(geometry, method="structure")
-        inner = geometry.representative_point()
-        return "zone", geometry, (inner.x, inner.y)
-    return "", None, None
-
-
-def _from_zone_layer(
-    hints: SampleHints, ids: tuple[str, ...], field: Field, draft: Draft
-) -> Places | None:
-    assert hints.zone_layer is not None
-    features = read_features(hints.zone_layer, layer=None, crs=None, option="samples")
-    named: dict[str, Any] = {}
-    column = hints.zone_column
-    for row, geometry in zip(features.attributes, features.geometries, strict=True):
-        keys = [column] if column else [key for key in row if key.lower() in ("zone", "name", "id")]
-        for key in keys:
-            if row.get(key) is not None:
-                named.setdefault(plain_words(str(row[key])), geometry)
-    kinds, areas, points = [], [], []
-    for name in ids:
-        geometry = named.get(plain_words(name))
-        if geometry is None:
-            there = ", ".join(sorted(named)[:8])
-            draft.note(
-                "IN-JOIN",
-                f"no zone is called `{name}` in {hints.zone_layer.name}; there are: {there}",
-                "name the column with `--zone-column`, or mend the names",
-            )
-            continue
-        moved = transform_geometry(geometry, source=features.crs, target=field.crs)
-        kind, area, point = _placed(moved)
-        kinds.append(kind)
-        areas.append(area)
-        points.append(point or (np.nan, np.nan))
-    if draft.broken:
-        return None
-    draft.saw("places", "zone layer", f"{len(ids)} sample zones joined by name")
-    return Places(east_north_m=np.array(points), kind=tuple(kinds), areas=tuple(areas))
-
-
-def _from_columns(
-    table: Table,
-    columns: tuple[int, int],
-    rows: list[int],
-    ids: tuple[str, ...],
-    *,
-    system: str | None,
-    field: Field,
-    hints: SampleHints,
-    draft: Draft,
-) -> Places | None:
-    names = " and ".join(f"`{table.headers[one]}`" for one in columns)
-    if system is None:
-        draft.note(
-            "IN-CRS",
-            f"the columns {names} do not say their coordinate system",
-            "give it with `--samples-crs EPSG:...`",
-        )
-        return None
-    if hints.crs is not None:
-        system = hints.crs
-    points = np.full((len(rows), 2), np.nan)
-    for place, row in enumerate(rows):
-        for axis, column in enumerate(columns):
-            cell = read_cell(table.rows[row][column], decimal_comma=table.decimal_comma)
-            if cell.value is None:
-                draft.note(
-                    "IN-NO-PLACE",
-                    f"`{table.rows[row][column]}` is no coordinate",
-                    where=f"line {table.lines[row]}, sample {ids[place]}",
-                )
-                continue
-            points[place, axis] = cell.value
-    if draft.broken:
-        return None
-    if _outside_degrees(points, system):
-        draft.note(
-            "IN-DEGREES",
-            f"the columns {names} are no longitude and latitude: {points[0, 0]:g}, {points[0, 1]:g}",
-            "they may be metres, or swapped: name them with `--column` and give `--samples-crs`",
-        )
-        return None
-    try:
-        metres = transform_points(points, source=system, target=field.crs)
-    except Exception:
-        draft.note(
-            "IN-CRS", f"`{system}` is not a coordinate system", "give `--samples-crs EPSG:...`"
-        )
-        return None
-    if not np.isfinite(metres).all():
-        draft.note("IN-DEGREES", f"some coordinates cannot lie in {system}")
-        return None
-    draft.saw("places", f"columns {names}", f"points, {system}")
-    return Places(east_north_m=metres, kind=("point",) * len(rows), areas=(None,) * len(rows))
-
-
-def _outside_degrees(points: np.ndarray, system: str) -> bool:
-    if system != WGS84:
-        return False
-    return bool((np.abs(points[:, 0]) > 180).any() or (np.abs(points[:, 1]) > 90).any())
 
 
 def _campaign(table: Table, chosen: Chosen, hints: SampleHints, draft: Draft) -> Campaign | None:
@@ -458,50 +249,3 @@ def _cores(
             if cell.value is not None and cell.value >= 1:
                 cores[place] = int(cell.value)
     return cores
-
-
-def _averaged(samples: SampleSet, hints: SampleHints, draft: Draft) -> SampleSet:
-    """Average samples at one place where that was asked for."""
-    if not hints.average_duplicates or any(kind != "point" for kind in samples.kind):
-        return samples
-    keys = [tuple(one) for one in np.round(samples.east_north_m * 2) / 2]
-    order: dict[tuple[float, ...], list[int]] = {}
-    for place, key in enumerate(keys):
-        order.setdefault(key, []).append(place)
-    if len(order) == len(keys):
-        return samples
-    groups = list(order.values())
-    draft.note("IN-AVERAGED", f"{len(keys) - len(groups)} duplicates were averaged")
-    return _grouped(samples, groups)
-
-
-def _grouped(samples: SampleSet, groups: list[list[int]]) -> SampleSet:
-    from dataclasses import replace
-
-    first = [group[0] for group in groups]
-
-    def mean(values: np.ndarray) -> np.ndarray:
-        with np.errstate(invalid="ignore"):
-            return np.array(
-                [np.nanmean(values[g]) if np.isfinite(values[g]).any() else np.nan for g in groups]
-            )
-
-    properties: Mapping[str, Measured] = {
-        name: Measured(
-            values=mean(one.values),
-            below_limit=np.array([bool(one.below_limit[g].all()) for g in groups]),
-            column=one.column,
-            unit_read=one.unit_read,
-        )
-        for name, one in samples.properties.items()
-    }
-    return replace(
-        samples,
-        ids=tuple("+".join(samples.ids[i] for i in group) for group in groups),
-        east_north_m=samples.east_north_m[first],
-        properties=properties,
-        kind=tuple(samples.kind[i] for i in first),
-        cores=np.array([samples.cores[g].sum() for g in groups]),
-        areas=tuple(samples.areas[i] for i in first),
-        core_points_m=tuple(samples.core_points_m[i] for i in first),
-    )

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
 
 import numpy as np
 
+from schorl.intake.draft import Draft
 from schorl.intake.headers import Column
 from schorl.intake.lab_tables import Table
 from schorl.intake.quantities import (
@@ -20,9 +20,6 @@ from schorl.intake.quantities import (
 )
 from schorl.model.reading import SampleHints
 from schorl.model.samples import PROPERTY_UNITS, Measured
-
-if TYPE_CHECKING:
-    from schorl.intake.samples import Draft
 
 
 @dataclass(frozen=True, kw_only=True)
