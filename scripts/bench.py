@@ -14,7 +14,7 @@ from pathlib import Path
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-PARTS = ("job", "geostat", "zones", "formats")
+PARTS = ("job", "geostat", "zones")
 
 
 def main(arguments: list[str]) -> int:

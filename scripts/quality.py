@@ -14,12 +14,12 @@ from pathlib import Path
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-PARTS = ("surfaces", "censored", "zones", "seasons")
+PARTS = ("zones",)
 
 
 def main(arguments: list[str]) -> int:
-    """Run the quality check that is named, the surfaces by default."""
-    part, rest = (arguments[0], arguments[1:]) if arguments else ("surfaces", [])
+    """Run the quality check that is named, zones by default."""
+    part, rest = (arguments[0], arguments[1:]) if arguments else ("zones", [])
     if part not in PARTS:
         print(__doc__, file=sys.stderr)
         return 2
