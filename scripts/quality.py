@@ -1,9 +1,6 @@
 """How good the maps and decisions are, on real and simulated fields.
 
-python scripts/quality.py surfaces   map quality beside other fits, real and simulated fields
-python scripts/quality.py censored   values below the detection limit
 python scripts/quality.py zones      flat or zones: decisions on fresh simulated fields
-python scripts/quality.py seasons    season-to-season claims on simulated pairs
 """
 
 from __future__ import annotations
