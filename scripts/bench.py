@@ -3,7 +3,6 @@
 python scripts/bench.py              the whole job on the 50 ha sample field
 python scripts/bench.py geostat      kriging beside PyKrige and GSTools
 python scripts/bench.py zones        drawing zones
-python scripts/bench.py formats      writing and verifying files
 """
 
 from __future__ import annotations
