@@ -6,7 +6,6 @@ import json
 import shutil
 import subprocess
 import sys
-import time
 from pathlib import Path
 
 import pytest
@@ -138,18 +137,32 @@ def test_the_same_bytes_with_any_threads_and_hash_seed(tmp_path):
     assert seen[0] == seen[1] == seen[2]
 
 
+STOPPED = """
+import sys, time
+from schorl.formats import pack
+def ready(*_):
+    print("ready", flush=True)
+    time.sleep(60)
+pack._read_back = ready
+from schorl.cli import main
+main(["prescribe", sys.argv[1], "--out", sys.argv[2]])
+"""
+
+
 @pytest.mark.skipif(sys.platform == "win32", reason="signals are POSIX")
-def test_a_terminated_run_leaves_nothing(tmp_path):
+@pytest.mark.parametrize("signal_name", ["SIGTERM", "SIGINT"])
+def test_a_stopped_run_leaves_nothing(tmp_path, signal_name):
+    """Stopped with the whole pack written beside, just before it is read back."""
     import signal
 
-    command = [sys.executable, "-m", "schorl", "prescribe", str(MARL_PIT), "--out", str(tmp_path)]
-    for number, code in ((signal.SIGTERM, 143), (signal.SIGINT, 130)):
-        with subprocess.Popen(command, stderr=subprocess.PIPE, stdout=subprocess.PIPE) as process:
-            time.sleep(1.2)
-            process.send_signal(number)
-            process.communicate(timeout=30)
-            assert process.returncode == code
-        assert list(tmp_path.iterdir()) == []
+    command = [sys.executable, "-c", STOPPED, str(MARL_PIT), str(tmp_path)]
+    with subprocess.Popen(command, stderr=subprocess.PIPE, stdout=subprocess.PIPE) as process:
+        assert process.stdout.readline() == b"ready\n"
+        assert list(tmp_path.iterdir())
+        process.send_signal(getattr(signal, signal_name))
+        process.communicate(timeout=30)
+    assert process.returncode == {"SIGTERM": 143, "SIGINT": 130}[signal_name]
+    assert list(tmp_path.iterdir()) == []
 
 
 def test_new_writes_a_job_that_prescribes(tmp_path):

@@ -46,6 +46,8 @@ def read_applied(
             if geometry is None or not isinstance(value, int | float):
                 continue
             moved = transform_geometry(geometry, source=features.crs, target=field.crs)
+            if not moved.is_valid:
+                moved = shapely.make_valid(moved, method="structure")
             if moved.geom_type in ("Point", "MultiPoint"):
                 moved = shapely.buffer(moved, HALF_CELL_M, cap_style="square")
             areas.append((moved, _sane(path, float(value) * factor)))
@@ -54,7 +56,10 @@ def read_applied(
     except Unreadable as problem:
         return Reading(value=None, findings=(problem.found,))
     held = [(shapely.intersection(area, field.boundary).area, rate) for area, rate in areas]
-    total = sum(area for area, _ in held) or 1.0
+    total = sum(area for area, _ in held)
+    if total <= 0:
+        found = refuse("IN-ELSEWHERE", path, "none of the applied rates lies in the field").found
+        return Reading(value=None, findings=(found,))
     mean = sum(area * rate for area, rate in held) / total
     applied = AppliedBoron(
         on=on, kg_ha=mean, form=form, areas=tuple(areas), this_season=this_season, source=path.name

@@ -36,7 +36,9 @@ def read_boundary(
     found += _size_findings(path, field)
     how = f"{field.area_ha:.2f} ha, {features.crs_said}; worked in {_named(field)}"
     recognised = (Recognition(what="boundary", where=path.name, how=how),)
-    return Reading(value=field, findings=tuple(found), recognised=recognised)
+    stopped = any(one.code == "IN-NESTED" for one in found)
+    value = None if stopped else field
+    return Reading(value=value, findings=tuple(found), recognised=recognised)
 
 
 def _named(field: Field) -> str:
@@ -79,7 +81,19 @@ def _repaired(path: Path, parts: list[Polygon]) -> tuple[Area, list[Finding]]:
             raise refuse("IN-INVALID", path, f"{what}; mending it would change its area much")
         found.append(finding("IN-MENDED", where=path.name, what=f"{what}; it was mended"))
         mended.append(repaired)
+    found += _inside_others(path, mended)
     return _areas_only(shapely.union_all(mended)), found
+
+
+def _inside_others(path: Path, parts: list[Any]) -> list[Finding]:
+    """A polygon inside another may be a hole drawn apart; taken as a part it would be treated."""
+    found = []
+    pairs = shapely.STRtree(parts).query(parts, predicate="within").T
+    for inner, outer in pairs:
+        if inner != outer and not parts[inner].equals(parts[outer]):
+            what = f"polygon {inner + 1} lies inside polygon {outer + 1}"
+            found.append(finding("IN-NESTED", where=path.name, what=what))
+    return found
 
 
 def _areas_only(geometry: Any) -> Area:
@@ -95,6 +109,9 @@ def _areas_only(geometry: Any) -> Area:
 def _field(path: Path, boundary: Area, features: Features, *, name: str) -> Field:
     degrees = transform_geometry(boundary, source=features.crs, target=WGS84)
     west, south, east, north = degrees.bounds
+    if not (east - west < 5.0 and north - south < 5.0):
+        what = f"it reaches from {west:.3f}, {south:.3f} to {east:.3f}, {north:.3f} degrees"
+        raise refuse("IN-LARGE", path, what)
     metric = field_crs((west + east) / 2, (south + north) / 2, west=west, east=east)
     metres = transform_geometry(boundary, source=features.crs, target=metric)
     if not shapely.is_valid(metres):

@@ -25,6 +25,8 @@ BOUNDS = {
     "stones": (0.0, 95.0),
 }
 DECIMAL_PLACE = 8.0  # a value this many times off the middle looks like a slipped decimal point
+#: Middle of a field's values outside which another unit or exchanged columns are likely.
+LIKELY = {"boron": (0.12, 4.0), "organic_matter": (0.5, 15.0), "clay": (3.0, 65.0)}
 USUAL_BORON = (0.02, 8.0)  # median of a field, mg/kg
 
 
@@ -39,6 +41,7 @@ def check_samples(
             _duplicates(samples),
             _missing(samples),
             _impossible(samples),
+            _nought(samples),
             _slipped(samples, confirmed),
             _unit_mixed_up(samples),
             _few(samples),
@@ -130,6 +133,17 @@ def _impossible(samples: SampleSet) -> Iterator[Finding]:
             yield finding("IN-IMPOSSIBLE", where=_where(samples, int(place)), what=what)
 
 
+def _nought(samples: SampleSet) -> Iterator[Finding]:
+    """A laboratory reports below a limit, not 0: a 0 is a missing value or one below a limit."""
+    for name in ("boron", "organic_matter", "clay"):
+        one = samples.properties.get(name)
+        if one is None:
+            continue
+        for place in np.flatnonzero(one.known & (one.values == 0))[:20]:
+            what = f"{name.replace('_', ' ')} is 0"
+            yield finding("IN-NOUGHT", where=_where(samples, int(place)), what=what)
+
+
 def _slipped(samples: SampleSet, confirmed: tuple[str, ...]) -> Iterator[Finding]:
     for name in ("boron", "organic_matter", "clay"):
         one = samples.properties.get(name)
@@ -139,8 +153,11 @@ def _slipped(samples: SampleSet, confirmed: tuple[str, ...]) -> Iterator[Finding
         if sure.sum() < VERY_FEW:
             continue
         middle = float(np.median(one.values[sure]))
+        logs = np.log(one.values[sure] / middle)
+        spread = 1.4826 * float(np.median(np.abs(logs)))
+        limit = float(np.clip(np.exp(5.0 * spread), DECIMAL_PLACE / 2, DECIMAL_PLACE))
         ratio = one.values / middle
-        odd = sure & ((ratio > DECIMAL_PLACE) | (ratio < 1.0 / DECIMAL_PLACE))
+        odd = sure & ((ratio > limit) | (ratio < 1.0 / limit))
         for place in np.flatnonzero(odd):
             if samples.ids[place] in confirmed:
                 continue
@@ -159,6 +176,17 @@ def _unit_mixed_up(samples: SampleSet) -> Iterator[Finding]:
                 f"boron is {middle:.3g} mg/kg in the middle; fields lie within {low:g} to {high:g}"
             )
             yield finding("IN-UNIT-ODD", where=samples.source, what=what)
+    for name, (low, high) in LIKELY.items():
+        likely = samples.properties.get(name)
+        if likely is None or not likely.known.any():
+            continue
+        middle = float(np.nanmedian(likely.values))
+        if middle > 0 and not low <= middle <= high:
+            what = (
+                f"{name.replace('_', ' ')} is {middle:.3g} in the middle, read as "
+                f"{likely.unit_read}; fields mostly lie within {low:g} to {high:g}"
+            )
+            yield finding("IN-UNIT-LIKELY", where=samples.source, what=what)
     for name, most in (("organic_matter", 60.0), ("clay", 90.0)):
         one: Measured | None = samples.properties.get(name)
         if one is None or not one.known.any():

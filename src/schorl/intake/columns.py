@@ -2,16 +2,18 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
 from schorl.intake.draft import Draft
 from schorl.intake.headers import Column, method_in, recognise
 from schorl.intake.lab_tables import Table
-from schorl.intake.quantities import plain_words, read_cell
+from schorl.intake.quantities import plain_words
 from schorl.model.reading import SampleHints
 
 CM_PER_INCH = 2.54
+LENGTHS = frozenset({"cm", "mm", "in", "inch", "inches"})
 PLACES = ("sample", "longitude", "latitude", "east", "north", "depth", "cores")
 
 
@@ -52,6 +54,8 @@ def choose_columns(table: Table, hints: SampleHints, draft: Draft) -> Chosen:
             places[what] = hinted[what].place
         elif candidates:
             places[what] = candidates[0].place
+        if what in ("longitude", "latitude") and what not in hinted:
+            _one_of(what, candidates, hinted, draft)
     boron = properties.get("boron")
     return Chosen(
         properties=properties,
@@ -64,8 +68,13 @@ def choose_columns(table: Table, hints: SampleHints, draft: Draft) -> Chosen:
 def _hinted(table: Table, hints: SampleHints, draft: Draft) -> dict[str, Column]:
     hinted = {}
     by_header = {plain_words(header): place for place, header in enumerate(table.headers)}
+    plain = [plain_words(header) for header in table.headers]
     for what, header in hints.columns.items():
         place = by_header.get(plain_words(header))
+        if plain.count(plain_words(header)) > 1:
+            draft.note("IN-TWO-COLUMNS", f"{plain.count(plain_words(header))} columns are called "
+                       f"`{header}`", "give them different names")  # fmt: skip
+            continue
         if place is None:
             have = ", ".join(f"`{one}`" for one in table.headers if one)
             draft.note("IN-COLUMN", f"no column `{header}`; it has {have}")
@@ -74,13 +83,25 @@ def _hinted(table: Table, hints: SampleHints, draft: Draft) -> dict[str, Column]
         hinted[what] = Column(
             place=place,
             header=table.headers[place],
-            what=what,
+            what=_says_carbon(what, table.headers[place]),
             unit=known.unit if known else None,
             method=method_in(plain_words(table.headers[place])),
             oxide="b2o3" in plain_words(table.headers[place]),
             depth=known.depth if known else None,
         )
     return hinted
+
+
+CARBON = frozenset(
+    ["oc", "toc", "soc", "corg", "carbon", "kohlenstoff", "carbone", "carbono", "carbonio", "kol"]
+)
+
+
+def _says_carbon(what: str, header: str) -> str:
+    """A column named as organic matter whose header says carbon is carbon."""
+    words = set(re.split(r"[\s,;:()\[\]{}/.%-]+", plain_words(header)))
+    said = words & CARBON or plain_words(header).replace(".", "").startswith(("c org", "org c"))
+    return "organic_carbon" if what == "organic_matter" and said else what
 
 
 def _one_of(
@@ -108,22 +129,28 @@ def _depth_cm(
         cells = {row[depth] for row in table.rows if row[depth]}
         said = [wanted] if wanted else (list(cells) if len(cells) == 1 else [])
         header = plain_words(table.headers[depth])
-        if said and "in" in header.split() and "in" not in said[0]:
-            said = [f"{said[0]} in"]
+        unit = next((one for one in re.split(r"[\s()\[\]]+", header) if one in LENGTHS), "")
+        if said and said[0] and not re.search(r"[a-z\"]", plain_words(said[0])):
+            said = [f"{said[0]} {unit}"]
     if not said or said[0] is None:
         return None
     return _bottom_cm(said[0])
 
 
 def _bottom_cm(text: str) -> float | None:
-    """Lower end of "0-20 cm", "20", "0 - 8 in" in centimetres."""
+    """Lower end of "0-20 cm", "20 cm", "0 - 8 in" in centimetres; None without a unit.
+
+    Samples that do not begin at the surface say nothing of the topsoil: None, so it is asked.
+    """
     text = plain_words(text).replace("–", "-")
-    factor = CM_PER_INCH if "in" in text or '"' in text else 1.0
-    tail = text.replace("cm", "").replace("inches", "").replace("in", "").replace('"', "")
-    cell = read_cell(tail.split("-")[-1].strip(), decimal_comma=True)
-    if cell.value is None or not 0 < cell.value * factor <= 200:
+    found = re.fullmatch(
+        r"(?:(\d+(?:[.,]\d+)?)\s*-\s*)?(\d+(?:[.,]\d+)?)\s*(cm|mm|in|inch|inches|\")", text
+    )
+    if found is None or float((found[1] or "0").replace(",", ".")) > 0:
         return None
-    return cell.value * factor
+    factor = {"cm": 1.0, "mm": 0.1}.get(found[3], CM_PER_INCH)
+    depth = float(found[2].replace(",", ".")) * factor
+    return depth if 0 < depth <= 200 else None
 
 
 def pivoted(table: Table, draft: Draft) -> Table:

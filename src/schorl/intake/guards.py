@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 import re
 import zipfile
+import zlib
 from pathlib import Path
 
 from schorl.findings import Finding, finding
@@ -61,7 +62,16 @@ def unpacked(path: Path, data: bytes) -> dict[str, bytes]:
             if len(infos) > MOST_ENTRIES:
                 raise refuse("IN-ARCHIVE", path, f"{len(infos)} entries; at most {MOST_ENTRIES}")
             return _members(path, archive, infos, packed=len(data))
-    except (zipfile.BadZipFile, NotImplementedError, RuntimeError, EOFError, ValueError) as reason:
+    except (
+        zipfile.BadZipFile,
+        zlib.error,
+        NotImplementedError,
+        RuntimeError,
+        EOFError,
+        ValueError,
+        OSError,
+        KeyError,
+    ) as reason:
         raise refuse("IN-ARCHIVE", path, f"not a readable archive: {reason}") from None
 
 
@@ -84,9 +94,9 @@ def _members(
 
 def refuse_xml_tricks(path: Path, data: bytes) -> None:
     """Refuse XML with a document type: entities can explode or fetch files."""
-    head = data[:4096].lstrip(b"\xef\xbb\xbf")
-    text = data if len(data) < 1 << 20 else data[: 1 << 20]
-    if b"\0" in head:
-        text = data.decode("utf-16", errors="replace").encode("utf-8")[: 1 << 20]
-    if re.search(rb"<!\s*(DOCTYPE|ENTITY)", text, flags=re.IGNORECASE):
+    # A document type stands before the first element, however much is put before it; wide
+    # encodings are brought to one byte a character.
+    text = data.replace(b"\0", b"").lstrip(b"\xef\xbb\xbf\xff\xfe")
+    prolog = re.match(rb"(?:\s+|<\?.*?\?>|<!--.*?-->)*", text, flags=re.DOTALL)
+    if text[prolog.end() if prolog else 0 :].startswith(b"<!"):
         raise refuse("IN-XML", path, "the XML declares a document type or entities")

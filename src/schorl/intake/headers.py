@@ -67,6 +67,9 @@ WORDS: dict[str, tuple[str, ...]] = {
     "unit": ("unit", "units", "einheit", "unite", "unidad", "unidade", "unita", "eenheid", "enhet"),
 }  # fmt: skip
 
+#: Words beside boron, also in brackets, that make it another test than available boron.
+TOTAL = frozenset({"total", "gesamt", "totale", "gesamtgehalt", "aqua", "konigswasser"})
+
 METHOD_WORDS = {
     "hot water": ("hot water", "hws", "hwb", "heisswasser", "eau bouillante", "agua caliente",
                   "agua quente", "acqua calda", "heet water", "hw boron", "b hw", "bortal"),
@@ -104,7 +107,9 @@ def _column(place: int, header: str) -> Column | None:
     method = method_in(text)
     depth = _depth_in(text)
     name = _bare_name(text)
-    what = _meaning(name)
+    what = None if re.match(r"Mo\b", header.strip()) else _meaning(name)  # molybdenum
+    if what == "boron" and set(re.split(r"[\s()\[\]{},;:]+", text)) & TOTAL:
+        what = "total_boron"
     if what is None:
         return None
     return Column(

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
+import re
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -13,6 +14,7 @@ from schorl.intake.quantities import unit_named
 
 TABLE_SUFFIXES = {".csv", ".txt", ".tsv", ".xlsx"}
 MOST_ROWS = 60_000
+MOST_CELLS = 3_000_000  # of the rectangle that a sheet's filled cells span
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -42,13 +44,13 @@ def read_table(path: Path, *, layer: str | None) -> Table:
     else:
         text, encoding = _decoded(path, data)
         delimiter = _delimiter(text)
-        raw = list(csv.reader(io.StringIO(text, newline=""), delimiter=delimiter))
+        raw = _split(path, text, delimiter)
         comma = _decimal_comma(raw, delimiter)
         named = {",": "comma", ";": "semicolon", "\t": "tab"}[delimiter]
         how = f"{encoding}, {named}, decimal {'comma' if comma else 'point'}"
     if len(raw) > MOST_ROWS:
         raise refuse("IN-ROWS", path, f"{len(raw)} rows; at most {MOST_ROWS} are read")
-    return _with_header(path, raw, comma, how)
+    return _with_header(path, raw, comma, how, aligned=path.suffix.lower() == ".xlsx")
 
 
 def _decoded(path: Path, data: bytes) -> tuple[str, str]:
@@ -70,8 +72,17 @@ def _decoded(path: Path, data: bytes) -> tuple[str, str]:
     return data.decode("cp1252", errors="replace"), "latin-1"
 
 
+def _split(path: Path, text: str, delimiter: str) -> list[list[str]]:
+    reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
+    try:
+        return list(reader)
+    except csv.Error as reason:
+        what = f"line {reader.line_num}: a cell cannot be read ({reason})"
+        raise refuse("IN-BROKEN", path, what, "mend the quotation marks of that line") from None
+
+
 def _delimiter(text: str) -> str:
-    lines = [line for line in text.splitlines() if line.strip()][:40]
+    lines = [line[:4000] for line in text.splitlines() if line.strip()][:40]
     score = {}
     for mark in (";", "\t", ","):
         counts = [len(next(csv.reader([line], delimiter=mark))) for line in lines]
@@ -99,6 +110,8 @@ def _sheet(path: Path, data: bytes, layer: str | None) -> list[list[str]]:
     for name, member in unpacked(path, data).items():
         if name.lower().endswith((".xml", ".rels")):
             refuse_xml_tricks(path, member)
+        if name.lower().startswith("xl/worksheets/"):
+            _refuse_wide_sheet(path, member)
         if name.lower().endswith((".zip", ".xlsx")):
             raise refuse("IN-ARCHIVE", path, f"an archive within the spreadsheet: {name}")
     try:
@@ -122,6 +135,22 @@ def _sheet(path: Path, data: bytes, layer: str | None) -> list[list[str]]:
         raise refuse("IN-BROKEN", path, f"not a readable spreadsheet: {reason}") from None
 
 
+def _refuse_wide_sheet(path: Path, content: bytes) -> None:
+    """Few cells can span a rectangle of billions, which the reader would lay out in memory."""
+    column, row = 1 + content.count(b"<c>"), 1
+    for letters, number in re.findall(
+        rb"<(?:\w+:)?c\s[^>]*?\br=\"([A-Z]{1,4})(\d{1,9})\"", content
+    ):
+        index = 0
+        for letter in letters:
+            index = index * 26 + letter - 64
+        column, row = max(column, index), max(row, int(number))
+    row = max([row, *map(int, re.findall(rb"<(?:\w+:)?row\s[^>]*?\br=\"(\d{1,9})\"", content))])
+    if column * row > MOST_CELLS:
+        what = f"a sheet spans {row} rows by {column} columns, mostly empty"
+        raise refuse("IN-ARCHIVE", path, what, "copy the table alone into a new sheet")
+
+
 def _cell_text(cell: object) -> str:
     if isinstance(cell, bool):
         return str(cell)
@@ -130,7 +159,9 @@ def _cell_text(cell: object) -> str:
     return "" if cell is None else str(cell)
 
 
-def _with_header(path: Path, raw: list[list[str]], comma: bool, how: str) -> Table:
+def _with_header(
+    path: Path, raw: list[list[str]], comma: bool, how: str, *, aligned: bool
+) -> Table:
     best, place = 0, -1
     for line, row in enumerate(raw[:60]):
         understood = len({one.what for one in recognise(row)})
@@ -147,6 +178,8 @@ def _with_header(path: Path, raw: list[list[str]], comma: bool, how: str) -> Tab
         units = _fitted(body[0][1], len(headers))
         body = body[1:]
     kept = [(line, row) for line, row in body if any(cell.strip() for cell in row)]
+    if not aligned:
+        _refuse_ragged(path, kept, headers)
     return Table(
         source=path.name,
         headers=tuple(headers),
@@ -156,6 +189,20 @@ def _with_header(path: Path, raw: list[list[str]], comma: bool, how: str) -> Tab
         decimal_comma=comma,
         how=how,
     )
+
+
+def _refuse_ragged(path: Path, body: list[tuple[int, list[str]]], headers: list[str]) -> None:
+    """A row with more or fewer cells than the header has its values in wrong columns."""
+    width = max(place for place, header in enumerate(headers, start=1) if header)
+    odd = []
+    for line, row in body:
+        cells = max([width, *(place for place, one in enumerate(row, start=1) if one.strip())])
+        if cells > width or 1 < len(row) < width:
+            odd.append((line, max(cells, width) if cells > width else len(row)))
+    if odd:
+        more = f" (and {len(odd) - 1} more lines)" if len(odd) > 1 else ""
+        what = f"line {odd[0][0]}{more} has {odd[0][1]} cells where the header has {width}"
+        raise refuse("IN-RAGGED", path, what)
 
 
 def _is_unit_row(row: list[str]) -> bool:

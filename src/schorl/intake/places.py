@@ -113,7 +113,7 @@ def _from_zone_layer(
     named: dict[str, Any] = {}
     column = hints.zone_column
     for row, geometry in zip(features.attributes, features.geometries, strict=True):
-        keys = [column] if column else [key for key in row if key.lower() in ("zone", "name", "id")]
+        keys = [column] if column else _name_columns(features, ids, draft)
         for key in keys:
             if row.get(key) is not None:
                 named.setdefault(plain_words(str(row[key])), geometry)
@@ -137,6 +137,22 @@ def _from_zone_layer(
         return None
     draft.saw("places", "zone layer", f"{len(ids)} sample zones joined by name")
     return Places(east_north_m=np.array(points), kind=tuple(kinds), areas=tuple(areas))
+
+
+def _name_columns(features: Features, ids: tuple[str, ...], draft: Draft) -> list[str]:
+    """The one column of a zone layer that holds the composites' names; two are asked about."""
+    wanted = {plain_words(name) for name in ids}
+    names = {
+        key: [plain_words(str(row.get(key))) for row in features.attributes]
+        for key in sorted({key for row in features.attributes for key in row})
+        if key.lower() in ("zone", "name", "id")
+    }
+    shares = {key: len(wanted & set(held)) for key, held in names.items()}
+    best = [key for key, share in shares.items() if share and share == max(shares.values())]
+    if len({tuple(names[key]) for key in best}) > 1 and not draft.broken:
+        what = f"several columns of the zone layer hold the names: {', '.join(best)}"
+        draft.note("IN-TWO-COLUMNS", what, f'say which with `--zone-column "{best[0]}"`')
+    return best[:1] or list(names)
 
 
 def _from_columns(

@@ -55,10 +55,11 @@ def _raster(path: Path, field: Field) -> tuple[np.ndarray, np.ndarray]:
             if source.crs is None:
                 raise refuse("IN-CRS", path, "the raster does not say its coordinate system")
             band = source.read(1, masked=True)
-            row, col = np.nonzero(~np.ma.getmaskarray(band) & np.isfinite(band.filled(np.nan)))
+            filled = np.ma.filled(band.astype(np.float64), np.nan)
+            row, col = np.nonzero(np.isfinite(filled))
             east, north = rasterio.transform.xy(source.transform, row, col)
             points = np.column_stack([east, north]).astype(np.float64)
-            values = np.asarray(band.data[row, col], dtype=np.float64)
+            values = filled[row, col]
             system = source.crs.to_wkt()
     except rasterio.errors.RasterioError as reason:
         raise refuse("IN-BROKEN", path, f"cannot be read as GeoTIFF: {reason}") from None

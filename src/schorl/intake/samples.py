@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from pathlib import Path
 
 import numpy as np
@@ -9,6 +10,7 @@ import numpy as np
 from schorl.intake.columns import Chosen, choose_columns, pivoted
 from schorl.intake.draft import Draft
 from schorl.intake.guards import Unreadable
+from schorl.intake.headers import method_in
 from schorl.intake.lab_tables import TABLE_SUFFIXES, Table, read_table
 from schorl.intake.places import places_of
 from schorl.intake.quantities import SLICE_CM, plain_words, read_cell
@@ -109,6 +111,11 @@ def _wanted_rows(table: Table, chosen: Chosen, hints: SampleHints, draft: Draft)
     """Rows that are samples of the wanted depth and not struck out."""
     rows = list(range(len(table.rows)))
     struck = {one.strip().lower() for one in hints.strike_out}
+    there = {
+        table.rows[i][chosen.sample].strip().lower() for i in rows if chosen.sample is not None
+    }
+    for name in sorted(struck - there):
+        draft.note("IN-NO-SUCH-SAMPLE", f"`--strike-out {name}`: no sample is called that")
     if struck and chosen.sample is not None:
         kept = [i for i in rows if table.rows[i][chosen.sample].strip().lower() not in struck]
         if len(kept) < len(rows):
@@ -138,7 +145,7 @@ def _ids(table: Table, chosen: Chosen, rows: list[int], draft: Draft) -> tuple[s
         draft.saw("sample names", "rows", "numbered by row, no column of names was understood")
         return tuple(f"row {table.lines[i]}" for i in rows)
     names = [table.rows[i][chosen.sample] or f"row {table.lines[i]}" for i in rows]
-    double = sorted({name for name in names if names.count(name) > 1})
+    double = sorted(name for name, count in Counter(names).items() if count > 1)
     if double:
         draft.note(
             "IN-SAME-NAME",
@@ -148,7 +155,20 @@ def _ids(table: Table, chosen: Chosen, rows: list[int], draft: Draft) -> tuple[s
     return tuple(names)
 
 
+def _ask_about_clashes(chosen: Chosen, hints: SampleHints, draft: Draft) -> None:
+    """What a person gave must not contradict what the file says of method and depth."""
+    named = None if hints.method is None else method_in(plain_words(hints.method))
+    if named is not None and chosen.method not in (None, named):
+        what = f'`--method "{hints.method}"` was given, the boron column says {chosen.method}'
+        draft.note("IN-METHOD-CLASH", what)
+    said = chosen.depth_cm
+    if hints.depth_cm is not None and said is not None and abs(hints.depth_cm - said) > 0.5:
+        what = f"`--depth-cm {hints.depth_cm:g}` was given, the file says {said:g} cm"
+        draft.note("IN-DEPTH-CLASH", what)
+
+
 def _campaign(table: Table, chosen: Chosen, hints: SampleHints, draft: Draft) -> Campaign | None:
+    _ask_about_clashes(chosen, hints, draft)
     method = hints.method or chosen.method
     if method is None:
         draft.note(
@@ -194,6 +214,9 @@ def _properties(
             assert value is not None
             constants[name] = value
             draft.saw(name.replace("_", " "), "job", f"one figure for the field: {value:g} %")
+            if name in chosen.properties:
+                header = chosen.properties[name].header
+                draft.note("IN-DECLARED", f"{value:g} % is declared, `{header}` is not used")
             continue
         column = chosen.properties.get(name)
         if column is None:
@@ -220,8 +243,8 @@ def _properties(
 
 
 def _one_value(measured: Measured) -> bool:
-    known = measured.values[measured.known]
-    return len(known) > 2 and bool(np.ptp(known) == 0)
+    whole = bool(measured.known.all()) and not measured.below_limit.any()
+    return len(measured.values) > 2 and whole and bool(np.ptp(measured.values) == 0)
 
 
 def _warn_depth_basis(unit: str, name: str, hints: SampleHints, draft: Draft) -> None:

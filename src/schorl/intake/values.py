@@ -83,14 +83,19 @@ def _unit_of(
         unit = unit_named(asked)
         if unit is None:
             draft.note("IN-UNIT", f"`{asked}` is not a unit that is known", where=column.header)
+        elif column.unit not in (None, unit) and not unit.startswith(f"{column.unit} "):
+            what = f"`--unit {name}={asked}` was given, `{column.header}` says {column.unit}"
+            draft.note("IN-UNIT", what, "leave `--unit` out, or mend the header")
+            return None
         return unit
     from_cells = {cell.unit for cell in cells if cell.unit}
     named = {unit_named(one) for one in from_cells}
-    said = column.unit or unit_named(table.units[column.place])
-    if len(named | {said} - {None}) > 1:
+    in_row = unit_named(table.units[column.place])
+    said = column.unit or in_row
+    if len((named | {said, in_row}) - {None}) > 1:
         draft.note(
             "IN-UNIT",
-            f"`{column.header}` mixes units: {', '.join(sorted({*from_cells, said or 'none'}))}",
+            f"`{column.header}` mixes units: {', '.join(sorted({*from_cells, *(one for one in (said, in_row) if one)}))}",
             f"bring it to one unit, or give `--unit {name}=...`",
         )
         return None

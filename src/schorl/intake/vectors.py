@@ -65,6 +65,9 @@ def _check_content(path: Path, suffix: str, data: bytes) -> None:
             document = json.loads(data.decode("utf-8-sig"))
         except (UnicodeDecodeError, json.JSONDecodeError, RecursionError) as reason:
             raise refuse("IN-BROKEN", path, f"not valid JSON: {reason}") from None
+        if isinstance(document, dict) and "crs" in document and document["crs"] is None:
+            what = "the file says that its coordinate system is not known (`crs` is null)"
+            raise refuse("IN-CRS", path, what, "write it in longitude and latitude")
         if not isinstance(document, dict) or "type" not in document:
             raise refuse("IN-BROKEN", path, "JSON, but not GeoJSON: it has no `type`")
     if suffix == ".gpkg" and not data.startswith(b"SQLite format 3\0"):
