@@ -122,6 +122,7 @@ class MachinePart(_Section):
     carrier: str = ""
     carrier_rate_kg_ha: float | None = POSITIVE
     carrier_may_vary: bool | None = None
+    blend_pct: float | None = Field(default=None, gt=0, le=100)
     headland_m: float = Field(default=0.0, ge=0)
     first_pass: str = ""
     nozzle_size: str = ""

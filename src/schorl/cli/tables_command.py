@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import textwrap
+from collections.abc import Mapping
 
 import click
 
@@ -30,19 +31,26 @@ def command(name: str | None, as_json: bool, quiet: bool, verbose: int) -> None:
     run_command("tables", manner, lambda: _one(name) if name else _all())
 
 
-def _all() -> Answer:
-    from schorl.agronomy.tables import table, table_names
+def _tables() -> dict[str, tuple[Mapping[str, str], ...]]:
+    """Rows of all tables, of agronomy and of machines, by name."""
+    from schorl.agronomy import tables as of_agronomy
+    from schorl.machinery import tables as of_machines
 
-    sizes = {name: len(table(name)) for name in table_names()}
+    rows = {name: tuple(of_agronomy.table(name)) for name in of_agronomy.table_names()}
+    rows |= {name: tuple(of_machines.table(name).values()) for name in of_machines.table_names()}
+    return dict(sorted(rows.items()))
+
+
+def _all() -> Answer:
+    sizes = {name: len(rows) for name, rows in _tables().items()}
     lines = [f"{name:<28}{size:>4} rows" for name, size in sizes.items()]
     return Answer(result={"tables": sizes}, text="\n".join(lines))
 
 
 def _one(name: str) -> Answer:
-    from schorl.agronomy.tables import table, table_names
-
-    if name not in table_names():
-        known = ", ".join(table_names())
+    tables = _tables()
+    if name not in tables:
+        known = ", ".join(tables)
         raise UsageProblem(
             [
                 finding(
@@ -53,7 +61,7 @@ def _one(name: str) -> Answer:
                 )
             ]
         )
-    rows = [dict(row) for row in table(name)]
+    rows = [dict(row) for row in tables[name]]
     return Answer(result={"name": name, "rows": rows}, text="\n\n".join(map(_row_text, rows)))
 
 

@@ -132,6 +132,7 @@ class Machine:
     carrier: str = ""
     carrier_rate_kg_ha: float | None = None
     carrier_may_vary: bool | None = None
+    blend_pct: float | None = None  # boron product in the blend with the carrier, % by weight
     headland_m: float = 0.0
     first_pass: str = ""
     nozzle_size: str = ""

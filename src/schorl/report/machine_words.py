@@ -18,7 +18,48 @@ FIGURES: dict[str, tuple[str, str, str, float]] = {
     "flow_l_min": ("Flow of the whole boom", "L/min", "gal/min", units.L_PER_US_GAL),
     "nozzle_l_min": ("Flow of one nozzle", "L/min", "gal/min", units.L_PER_US_GAL),
     "pressure_bar": ("Pressure", "bar", "psi", units.BAR_PER_PSI),
+    "open_pct": ("Time the nozzle is open", "%", "%", 1.0),
+    "dose_l_ha_event": ("Dose of one event", "L/ha", "gal/ac", units.L_HA_PER_US_GAL_ACRE),
+    "boron_in_water_mg_l": ("Boron in the irrigation water", "mg/L", "ppm", 1.0),
 }
+
+#: Fact of the plan -> what it is; its unit is the end of its name.
+FACTS = {
+    "look_ahead_m": "Look ahead",
+    "rate_change_m": "Way until a new rate holds",
+    "calibration_s": "Time of the calibration run",
+    "mix_density_kg_l": "Density of the mix",
+    "dissolves_g_b_l": "Most boron the water safely holds",
+    "nozzle_colour": "Colour of the nozzle",
+    "least_l_ha": "Least the nozzle gives",
+    "most_l_ha": "Most the nozzle gives",
+    "product_in_all_kg": "Boron product in all",
+    "product_in_all_l": "Liquid product in all",
+    "product_full_load_kg": "Boron product in a full load",
+    "product_full_load_l": "Liquid product in a full load",
+    "product_last_load_kg": "Boron product in the last load",
+    "product_last_load_l": "Liquid product in the last load",
+    "carrier_in_all_kg": "Carrier in all",
+    "carrier_full_load_kg": "Carrier in a full load",
+    "carrier_last_load_kg": "Carrier in the last load",
+    "water_in_all_l": "Water in all",
+    "water_full_load_l": "Water in a full load",
+    "water_last_load_l": "Water in the last load",
+}
+#: End of a fact's name -> metric unit, US unit, metric over US.
+ENDS = {
+    "_l_ha": ("L/ha", "gal/ac", units.L_HA_PER_US_GAL_ACRE),
+    "_kg_l": ("kg/L", "lb/gal", units.KG_PER_LB / units.L_PER_US_GAL),
+    "_g_b_l": ("g B/L", "g B/L", 1.0),
+    "_kg": ("kg", "lb", units.KG_PER_LB),
+    "_l": ("L", "gal", units.L_PER_US_GAL),
+    "_s": ("s", "s", 1.0),
+    "_m": ("m", "ft", units.M_PER_FT),
+}
+#: Facts of what is loaded start with one of these.
+LOADED = ("product_", "carrier_", "water_")
+#: Facts that are said elsewhere.
+ELSEWHERE = ("bags", "calibration_m", "order_unit", "mix_g_b_l", "nozzle_size")
 
 
 def point_rows(record: RunRecord, shown: Shown) -> list[list[str]]:
@@ -65,7 +106,7 @@ def setting_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
     if record.settings.product.form is Form.SPRAY:
         rows += _spray_rows(record, shown)
     for name, value in plan.facts.items():
-        if name not in ("bags", "calibration_m"):
+        if name not in ELSEWHERE and not name.startswith(LOADED):
             rows.append(_fact(name, value, shown))
     return rows
 
@@ -81,14 +122,13 @@ def _spray_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
 
 
 def _fact(name: str, value: float | str, shown: Shown) -> tuple[str, str]:
-    label = {
-        "look_ahead_m": "Look ahead",
-        "rate_change_m": "Way until a new rate holds",
-    }.get(name, name.replace("_", " ").capitalize())
+    label = FACTS.get(name, name.replace("_", " ").capitalize())
     if isinstance(value, str):
         return label, value
-    if name.endswith("_m"):
-        return label.removesuffix(" m"), shown.length(value, 1)
+    for end, (metric, us, factor) in ENDS.items():
+        if name.endswith(end):
+            amount = value / factor if shown.us else value
+            return label, f"{figure(amount, _decimals(amount))} {us if shown.us else metric}"
     return label, f"{value:.4g}"
 
 
@@ -99,15 +139,15 @@ def load_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
     if plan.order > 0:
         bags = plan.facts.get("bags")
         said = f", {bags:g} bags" if isinstance(bags, float | int) else ""
-        rows.append(("To order, spare included", shown.amount(plan.order) + said))
+        bought = Shown(shown.system, str(plan.facts.get("order_unit", prescription.unit)))
+        rows.append(("Boron product to order, spare included", bought.amount(plan.order) + said))
     if plan.per_load > 0:
         rows.append(("One load holds", shown.amount(plan.per_load)))
         rows.append(("Loads", loads_words(plan.loads)))
     rows.append(("Boron in all", shown.boron(prescription.boron_kg)))
-    strength, mix = record.settings.product.boron_g_l, record.settings.machine.mix_g_b_l
-    if strength and mix and record.settings.product.form is Form.SPRAY:
-        rows.append(("Of it liquid product", shown.amount(1000 * prescription.boron_kg / strength)))
-        rows.append(("Liquid product in 100 parts of mix", f"{100 * mix / strength:.3g}"))
+    rows += [
+        _fact(name, value, shown) for name, value in plan.facts.items() if name.startswith(LOADED)
+    ]
     return rows
 
 

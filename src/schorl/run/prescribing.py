@@ -90,6 +90,7 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
     _keep(found, zoned.findings)
     rated = prescribe_rates(zoned.zone_map, assessed, samples, mapped.surfaces, grid, settings)
     _keep(found, rated.findings)
+    settings = replace(settings, machine=rated.machine)
     found.extend(_override_notes(settings.overrides))
     return RunRecord(
         field=field,

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -14,12 +14,13 @@ from schorl.agronomy.chances import (
 )
 from schorl.agronomy.tables import limit
 from schorl.findings import Finding, finding
-from schorl.machinery.plan import machine_plan
+from schorl.machinery.plan import MachineOutcome, machine_plan
+from schorl.machinery.sprayer import settled_machine
 from schorl.model.arrays import Flags, Floats
 from schorl.model.field import CellGrid
 from schorl.model.prescription import CellNeed, Limit, Outlook, PlanValue, Prescription, ZoneRate
 from schorl.model.samples import SampleSet
-from schorl.model.settings import Placement, RunSettings
+from schorl.model.settings import Machine, Placement, RunSettings
 from schorl.model.surface import Surface
 from schorl.model.zones import Zone, ZoneKind, ZoneMap
 from schorl.steps.advice import advice_for
@@ -33,7 +34,10 @@ from schorl.steps.zone_rates import (
     unevenness_of,
 )
 
-__all__ = ["Assessed", "Rated", "assess_cells", "plan_outcome", "prescribe_rates"]
+__all__ = [
+    "Assessed", "Rated", "ZoneRows", "assess_cells", "plan_outcome", "prescribe_rates",
+    "rated_zones",
+]  # fmt: skip
 
 #: Error of a predicted saving in trials on simulated fields, as a share of the flat loss, by
 #: number of samples; twice this is the range that is shown.
@@ -43,10 +47,11 @@ FEW_SAMPLES = 3
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Rated:
-    """The prescription and what was noticed."""
+    """The prescription, what was noticed, and the machine with mix and nozzle chosen."""
 
     prescription: Prescription
     findings: tuple[Finding, ...]
+    machine: Machine
 
 
 def prescribe_rates(
@@ -58,27 +63,48 @@ def prescribe_rates(
     settings: RunSettings,
 ) -> Rated:
     """Rates of all zones under every limit, with machine figures and outlook."""
-    need = assessed.need
-    ruled = [
-        _ruled_zone(zone, need, zone_map.labels == place, settings)
-        for place, zone in enumerate(zone_map.zones)
-    ]
+    need, job = assessed.need, settings
+    ruled = _ruled_zones(zone_map, need, job)
+    areas = [zone.area_ha for zone in zone_map.zones]
+    doses = [(area, one.wanted_kg_ha) for area, one in zip(areas, ruled, strict=True)]
+    # A spray's mix and nozzle are chosen to suit what the zones want; then that machine rules.
+    chosen = settled_machine(doses, job.product, job.machine, job.placement)
+    if chosen != job.machine:
+        settings = replace(job, machine=chosen)
+        ruled = _ruled_zones(zone_map, need, settings)
     machine = machine_plan(
-        [(zone.area_ha, one.boron_kg_ha) for zone, one in zip(zone_map.zones, ruled, strict=True)],
-        settings.product,
-        settings.machine,
-        foliar=settings.placement is Placement.FOLIAR,
+        [(area, one.boron_kg_ha) for area, one in zip(areas, ruled, strict=True)],
+        job.product,
+        job.machine,
+        placement=job.placement,
+        wanted=[one.wanted_kg_ha for one in ruled],
+        units=job.units,
     )
-    context = _Context(
+    rows = ZoneRows(
         zone_map=zone_map, need=need, samples=samples, surfaces=surfaces, grid=grid,
         settings=settings,
     )  # fmt: skip
+    return rated_zones(rows, ruled, machine, job=job, sources=assessed.sources)
+
+
+def rated_zones(
+    rows: ZoneRows,
+    ruled: Sequence[Ruled],
+    machine: MachineOutcome,
+    *,
+    job: RunSettings,
+    sources: Sequence[Mapping[str, str]],
+) -> Rated:
+    """The prescription of zones whose rates are ruled and whose machine figures are known.
+
+    ``rows.settings`` has the machine with mix and nozzle chosen, ``job`` has it as it was given:
+    other plans than this one choose theirs afresh.
+    """
+    zone_map, need, settings = rows.zone_map, rows.need, rows.settings
     rates = tuple(
-        context.zone_rate(place, ruled[place], machine.product_rates[place])
-        for place in range(len(ruled))
+        rows.zone_rate(place, one, machine.product_rates[place]) for place, one in enumerate(ruled)
     )
-    per_cell = _per_cell(zone_map, rates)
-    value = _value(zone_map, rates, need, settings)
+    value = _value(zone_map, rates, need, job)
     prescription = Prescription(
         zone_map=zone_map,
         rates=rates,
@@ -87,15 +113,15 @@ def prescribe_rates(
         unit=machine.unit,
         boron_pct=machine.boron_pct,
         boron_g_l=machine.boron_g_l,
-        field_outlook=outlook(need, per_cell, settings, area_ha=_area(zone_map)),
+        field_outlook=outlook(need, _per_cell(zone_map, rates), settings, area_ha=_area(zone_map)),
         value=value,
         machine=machine.plan,
-        saving=_saving(value, len(samples)),
-        advice=advice_for(samples, surfaces, rates, settings),
-        sources=assessed.sources,
+        saving=_saving(value, len(rows.samples)),
+        advice=advice_for(rows.samples, rows.surfaces, rates, settings),
+        sources=(*sources, *machine.sources),
     )
     found = (*machine.findings, *_findings(prescription, need, settings))
-    return Rated(prescription=prescription, findings=found)
+    return Rated(prescription=prescription, findings=found, machine=machine.machine)
 
 
 def _area(zone_map: ZoneMap) -> float:
@@ -104,6 +130,13 @@ def _area(zone_map: ZoneMap) -> float:
 
 def _per_cell(zone_map: ZoneMap, rates: tuple[ZoneRate, ...]) -> Floats:
     return np.array([rate.boron_kg_ha for rate in rates])[zone_map.labels]
+
+
+def _ruled_zones(zone_map: ZoneMap, need: CellNeed, settings: RunSettings) -> list[Ruled]:
+    return [
+        _ruled_zone(zone, need, zone_map.labels == place, settings)
+        for place, zone in enumerate(zone_map.zones)
+    ]
 
 
 def _ruled_zone(zone: Zone, need: CellNeed, chosen: Flags, settings: RunSettings) -> Ruled:
@@ -126,8 +159,8 @@ def _ruled_zone(zone: Zone, need: CellNeed, chosen: Flags, settings: RunSettings
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class _Context:
-    """What a zone's row is made from."""
+class ZoneRows:
+    """What the rows of zones are made from."""
 
     zone_map: ZoneMap
     need: CellNeed

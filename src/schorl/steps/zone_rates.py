@@ -14,7 +14,8 @@ from schorl.agronomy.chances import (
     expected_loss_kg_ha,
 )
 from schorl.agronomy.tables import limit
-from schorl.machinery.rates import machine_rate
+from schorl.machinery.rates import machine_rate, step_boron_kg_ha
+from schorl.machinery.sprayer import settled_machine
 from schorl.model.arrays import Counts, Flags, Floats
 from schorl.model.prescription import CellNeed, Limit, PlanOutcome
 from schorl.model.settings import Placement, RunSettings
@@ -108,12 +109,8 @@ def ruled_rate(cells: CellNeed, settings: RunSettings) -> Ruled:
 
 def _slack(settings: RunSettings, wanted: float) -> float:
     """Rounding down by less than one step is not what ruled a rate."""
-    machine = settings.machine
-    if not machine.step or wanted == 0.0:
-        return 1e-9
-    from schorl.machinery.rates import boron_per_unit
-
-    return machine.step * boron_per_unit(settings.product, machine)
+    step = step_boron_kg_ha(settings.product, settings.machine)
+    return step if step and wanted else 1e-9
 
 
 def least_worth(settings: RunSettings) -> float:
@@ -132,9 +129,18 @@ def plan_outcome(
         chosen = labels == label
         if chosen.any():
             rates[label] = ruled_rate(part_of(need, chosen), settings).boron_kg_ha
+    rates = _of_one_pass(rates, labels, settings)
     per_cell = np.where(labels >= 0, rates[np.maximum(labels, 0)] if count else 0.0, 0.0)
     loss = expected_loss_kg_ha(need, per_cell, cost_ratio=settings.crop.cost_ratio)
     return PlanOutcome(rates_kg_ha=rates, loss_kg=float(loss.sum()) * cell_ha)
+
+
+def _of_one_pass(rates: Floats, labels: Counts, settings: RunSettings) -> Floats:
+    """What is left of a plan's rates where a spray's mix and nozzle are chosen to suit it."""
+    ha = np.bincount(labels[labels >= 0], minlength=len(rates)).astype(float)
+    doses = list(zip(ha.tolist(), rates.tolist(), strict=True))
+    machine = settled_machine(doses, settings.product, settings.machine, settings.placement)
+    return machine_rate(rates, settings.product, machine)
 
 
 def cell_rates_kg_ha(need: CellNeed, settings: RunSettings) -> Floats:
