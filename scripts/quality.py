@@ -1,6 +1,8 @@
 """How good the maps and decisions are, on real and simulated fields.
 
 python scripts/quality.py zones      flat or zones: decisions on fresh simulated fields
+python scripts/quality.py surfaces   map quality beside PyKrige and a least-squares variogram
+python scripts/quality.py censored   values below the limit: draws against half the limit
 """
 
 from __future__ import annotations
@@ -11,7 +13,7 @@ from pathlib import Path
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-PARTS = ("zones",)
+PARTS = ("zones", "surfaces", "censored")
 
 
 def main(arguments: list[str]) -> int:

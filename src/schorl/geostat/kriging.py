@@ -13,6 +13,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from scipy.linalg import solve_triangular
@@ -25,6 +26,8 @@ from schorl.model.variogram import Support, Variogram
 
 #: Doubles of one work array: 2 MB, so that a chunk's arrays stay in a core's cache.
 CHUNK_DOUBLES = 262_144
+#: Bands of the triangular product: the more, the fewer products with zero, the smaller each.
+BANDS = 6
 #: More samples than this are kriged from neighbourhoods shared by tiles.
 GLOBAL_UP_TO = 800
 #: A point of the target this close to a sample (m) is at the sample.
@@ -168,10 +171,11 @@ def sample_to_target(
     total: Floats | None = None
     for offset in targets.offsets_m:
         gap = distances(targets.centres_m + offset, layout.points_m)
-        at_sample = None if filtered else gap <= SAME_PLACE_M
+        touching = not filtered and gap.min(initial=np.inf) <= SAME_PLACE_M
+        at_sample = gap <= SAME_PLACE_M if touching else None
         shared = correlation_in_place(gap, variogram.family, variogram.practical_range_m)
         shared *= variogram.partial_sill
-        if at_sample is not None and at_sample.any():
+        if at_sample is not None:
             shared[at_sample] += variogram.nugget
         total = shared if total is None else np.add(total, shared, out=total)
     assert total is not None
@@ -185,10 +189,9 @@ class System:
     """A factorised data covariance, ready for any number of targets."""
 
     inverse_lower: Floats  # L⁻¹, (n, n)
-    ones: Floats  # u = L⁻¹ 1
-    scores: Floats  # L⁻¹ (z - m), (n, d)
+    linear: Floats  # K⁻¹ (z - m) in d rows and K⁻¹ 1 in the last, (d + 1, n)
     mean: Floats  # (d,)
-    weight: float  # u'u
+    weight: float  # 1' K⁻¹ 1
 
     @classmethod
     def of(cls, layout: Layout, columns: Floats, variogram: Variogram) -> System:
@@ -207,22 +210,33 @@ class System:
         weight = float(ones @ ones)
         flat = inverse @ columns
         mean = ones @ flat / weight
+        scores = np.column_stack([flat - ones[:, None] * mean, ones])
         return cls(
             inverse_lower=inverse,
-            ones=ones,
-            scores=flat - ones[:, None] * mean,
+            linear=np.ascontiguousarray(scores.T @ inverse),
             mean=mean,
             weight=weight,
         )
 
     def predict(self, shared: Floats, own_variance: float) -> tuple[Floats, Floats]:
         """Estimate ``(m, d)`` and variance ``(m,)`` from covariances ``(n, m)`` with the data."""
-        whitened = self.inverse_lower @ shared
-        estimate = whitened.T @ self.scores + self.mean
-        slack = 1.0 - self.ones @ whitened
-        explained = np.einsum("ij,ij->j", whitened, whitened)
-        variance = own_variance - explained + slack * slack / self.weight
-        return estimate, np.maximum(variance, 0.0)
+        direct = self.linear @ shared
+        slack = 1.0 - direct[-1]
+        variance = own_variance - self.explained(shared) + slack * slack / self.weight
+        return direct[:-1].T + self.mean, np.maximum(variance, 0.0)
+
+    def explained(self, shared: Floats) -> Floats:
+        """Sum of squares of L⁻¹ c for each target, ``(m,)``.
+
+        By bands of rows: the upper right of L⁻¹ is zero, and a band needs no column beyond it.
+        """
+        count = len(shared)
+        edges = np.linspace(0, count, min(BANDS, count) + 1).astype(np.intp)
+        total = np.zeros(shared.shape[1])
+        for top, end in pairwise(edges):
+            band = self.inverse_lower[top:end, :end] @ shared[:end]
+            total += np.einsum("ij,ij->j", band, band)
+        return total
 
 
 def replace_turn(variogram: Variogram) -> Variogram:
@@ -250,18 +264,26 @@ def krige_global(
         shared = sample_to_target(layout, chosen, variogram, filtered=filtered)
         estimate[part], variance[part] = system.predict(shared, own)
         if not filtered:
-            _exact_at_samples(layout, columns, chosen, estimate[part], variance[part])
+            _exact_at_samples(layout, columns, chosen, estimate[part], variance[part], own=own)
 
     for_each(range(0, count, step), work)
     return estimate, variance
 
 
 def _exact_at_samples(
-    layout: Layout, columns: Floats, targets: Targets, estimate: Floats, variance: Floats
+    layout: Layout,
+    columns: Floats,
+    targets: Targets,
+    estimate: Floats,
+    variance: Floats,
+    *,
+    own: float,
 ) -> None:
     """A target at a sample gives the sample back exactly, without rounding."""
     if targets.block or not layout.all_points:
         return
-    rows, cols = np.nonzero(distances(targets.centres_m, layout.points_m) <= SAME_PLACE_M)
-    estimate[cols] = columns[rows]
-    variance[cols] = 0.0
+    near = np.flatnonzero(variance <= 1e-8 * own)  # spares the distances of all others
+    gap = distances(targets.centres_m[near], layout.points_m)
+    rows, cols = np.nonzero(gap <= SAME_PLACE_M)
+    estimate[near[cols]] = columns[rows]
+    variance[near[cols]] = 0.0

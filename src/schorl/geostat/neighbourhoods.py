@@ -14,7 +14,7 @@ from schorl.model.variogram import Support, Variogram
 
 BATCH = 512
 #: Samples in a tile's neighbourhood, and about how many of them lie within the tile's reach.
-TILE_SAMPLES, SAMPLES_PER_TILE = 240, 24
+TILE_SAMPLES, SAMPLES_PER_TILE = 400, 24
 
 
 def krige_nearest(
