@@ -16,6 +16,7 @@ from scipy.stats import norm
 
 from schorl.geostat import Support, Variogram, krige, leave_one_out
 from schorl.geostat.reml import fit_best_transform
+from schorl.steps.mapping import weak_below
 
 Z90 = float(norm.ppf(0.95))
 
@@ -54,7 +55,7 @@ def schorl(places, values, supports: Sequence[Support] | None = None) -> Model:
     if fit.verdict == "no pattern" or len(values) < 10 or skill < 0:
         verdict = "no pattern"
     else:
-        verdict = "weak pattern" if skill < 0.15 else "pattern found"
+        verdict = "weak pattern" if skill < weak_below(len(values)) else "pattern found"
     return Model(variogram=fit.variogram, log=model.log, verdict=verdict)
 
 

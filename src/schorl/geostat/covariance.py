@@ -11,16 +11,18 @@ from schorl.model.variogram import RANGE_OVER_SCALE, Variogram
 MATERN_FACTOR = np.sqrt(3.0) * RANGE_OVER_SCALE["matern32"]
 
 
-def correlation_in_place(distance: Floats, family: str, practical_range_m: float) -> Floats:
+def correlation_in_place(
+    distance: Floats, family: str, practical_range_m: float, *, spare: Floats | None = None
+) -> Floats:
     """Overwrite distances (metres, any shape) by the family's correlation, 1 at distance 0.
 
-    In place, because kriging spends its time here: no temporary of the size of the input is made
-    beyond one for the spherical and the Matérn.
+    In place, because kriging spends its time here; the spherical and the Matérn need one more
+    array of the same shape, ``spare`` where there is one to use.
     """
     if family == "spherical":
         distance *= 1.0 / practical_range_m
         np.minimum(distance, 1.0, out=distance)
-        cube = distance * distance
+        cube = np.multiply(distance, distance, out=spare)
         cube -= 3.0
         cube *= distance
         np.multiply(cube, 0.5, out=distance)
@@ -30,19 +32,23 @@ def correlation_in_place(distance: Floats, family: str, practical_range_m: float
         distance *= -3.0 / practical_range_m
         return np.exp(distance, out=distance)
     distance *= MATERN_FACTOR / practical_range_m
-    decay = np.exp(-distance)
+    decay = np.negative(distance, out=spare)
+    np.exp(decay, out=decay)
     distance += 1.0
     distance *= decay
     return distance
 
 
-def distances(targets_m: Floats, points_m: Floats) -> Floats:
+def distances(
+    targets_m: Floats, points_m: Floats, *, out: Floats | None = None, spare: Floats | None = None
+) -> Floats:
     """Distances between ``(p, 2)`` points (rows) and ``(m, 2)`` targets (columns), ``(p, m)``.
 
-    Differences first, squares after: exact to rounding also for points close together.
+    Differences first, squares after: exact to rounding also for points close together. ``out`` and
+    ``spare`` are arrays to work in, where there are some.
     """
-    east = targets_m[:, 0][None, :] - points_m[:, 0][:, None]
-    north = targets_m[:, 1][None, :] - points_m[:, 1][:, None]
+    east = np.subtract(targets_m[:, 0][None, :], points_m[:, 0][:, None], out=out)
+    north = np.subtract(targets_m[:, 1][None, :], points_m[:, 1][:, None], out=spare)
     east *= east
     north *= north
     east += north

@@ -20,7 +20,7 @@ from scipy.linalg import solve_triangular
 
 from schorl.geostat.covariance import correlation_in_place, correlations, distances, stretched
 from schorl.geostat.support import Layout, data_covariance, layout_of
-from schorl.geostat.threads import for_each, one_blas_thread
+from schorl.geostat.threads import Room, for_each, one_blas_thread
 from schorl.model.arrays import Floats
 from schorl.model.variogram import Support, Variogram
 
@@ -165,15 +165,20 @@ def block_offsets(block_m: float, side: int) -> Floats:
 
 
 def sample_to_target(
-    layout: Layout, targets: Targets, variogram: Variogram, *, filtered: bool
+    layout: Layout, targets: Targets, variogram: Variogram, *, filtered: bool, room: Room
 ) -> Floats:
-    """Covariance between samples (rows) and targets (columns), ``(n, m)``."""
+    """Covariance between samples (rows) and targets (columns), ``(n, m)``, in the thread's room."""
+    shape = len(layout.points_m), len(targets.centres_m)
+    spare = room.array("spare", shape)
     total: Floats | None = None
     for offset in targets.offsets_m:
-        gap = distances(targets.centres_m + offset, layout.points_m)
+        gap = room.array("gap" if total is None else "next gap", shape)
+        distances(targets.centres_m + offset, layout.points_m, out=gap, spare=spare)
         touching = not filtered and gap.min(initial=np.inf) <= SAME_PLACE_M
         at_sample = gap <= SAME_PLACE_M if touching else None
-        shared = correlation_in_place(gap, variogram.family, variogram.practical_range_m)
+        shared = correlation_in_place(
+            gap, variogram.family, variogram.practical_range_m, spare=spare
+        )
         shared *= variogram.partial_sill
         if at_sample is not None:
             shared[at_sample] += variogram.nugget
@@ -218,14 +223,14 @@ class System:
             weight=weight,
         )
 
-    def predict(self, shared: Floats, own_variance: float) -> tuple[Floats, Floats]:
+    def predict(self, shared: Floats, own_variance: float, room: Room) -> tuple[Floats, Floats]:
         """Estimate ``(m, d)`` and variance ``(m,)`` from covariances ``(n, m)`` with the data."""
         direct = self.linear @ shared
         slack = 1.0 - direct[-1]
-        variance = own_variance - self.explained(shared) + slack * slack / self.weight
+        variance = own_variance - self.explained(shared, room) + slack * slack / self.weight
         return direct[:-1].T + self.mean, np.maximum(variance, 0.0)
 
-    def explained(self, shared: Floats) -> Floats:
+    def explained(self, shared: Floats, room: Room) -> Floats:
         """Sum of squares of L⁻¹ c for each target, ``(m,)``.
 
         By bands of rows: the upper right of L⁻¹ is zero, and a band needs no column beyond it.
@@ -234,7 +239,8 @@ class System:
         edges = np.linspace(0, count, min(BANDS, count) + 1).astype(np.intp)
         total = np.zeros(shared.shape[1])
         for top, end in pairwise(edges):
-            band = self.inverse_lower[top:end, :end] @ shared[:end]
+            band = room.array("band", (int(end - top), shared.shape[1]))
+            np.matmul(self.inverse_lower[top:end, :end], shared[:end], out=band)
             total += np.einsum("ij,ij->j", band, band)
         return total
 
@@ -257,12 +263,13 @@ def krige_global(
     count = len(targets.centres_m)
     estimate, variance = np.empty((count, columns.shape[1])), np.empty(count)
     step = max(CHUNK_DOUBLES // max(len(layout.points_m), 1), 64)
+    room = Room()
 
     def work(start: int) -> None:
         part = slice(start, min(start + step, count))
         chosen = targets.part(part)
-        shared = sample_to_target(layout, chosen, variogram, filtered=filtered)
-        estimate[part], variance[part] = system.predict(shared, own)
+        shared = sample_to_target(layout, chosen, variogram, filtered=filtered, room=room)
+        estimate[part], variance[part] = system.predict(shared, own, room)
         if not filtered:
             _exact_at_samples(layout, columns, chosen, estimate[part], variance[part], own=own)
 

@@ -8,7 +8,7 @@ from scipy.spatial import cKDTree
 from schorl.geostat.covariance import correlation_in_place
 from schorl.geostat.kriging import SAME_PLACE_M, System, Targets, replace_turn, sample_to_target
 from schorl.geostat.support import Layout, layout_of
-from schorl.geostat.threads import for_each
+from schorl.geostat.threads import Room, for_each
 from schorl.model.arrays import Floats
 from schorl.model.variogram import Support, Variogram
 
@@ -71,7 +71,7 @@ def _picked_covariances(
 ) -> Floats:
     """Covariances of each target with its own samples, ``(targets, k)``."""
     if not layout.all_points:
-        shared = sample_to_target(layout, targets, variogram, filtered=filtered)
+        shared = sample_to_target(layout, targets, variogram, filtered=filtered, room=Room())
         return np.take_along_axis(shared.T, chosen, axis=1)
     points = layout.points_m[chosen]
     total = np.zeros(chosen.shape)
@@ -136,6 +136,7 @@ def _add_layer(
     starts = np.flatnonzero(np.r_[True, np.diff(key[order]) > 0])
     groups = np.split(order, starts[1:])
     estimate, variance = into
+    room = Room()
 
     def work(group: np.ndarray) -> None:
         _, nearest = tree.query(node_m[group[0]], k=min(TILE_SAMPLES, len(columns)))
@@ -144,8 +145,10 @@ def _add_layer(
         system = System.of(some, columns[nearest], variogram)
         for start in range(0, len(group), BATCH):
             part = group[start : start + BATCH]
-            shared = sample_to_target(some, targets.part(part), variogram, filtered=filtered)
-            mean, spread = system.predict(shared, own)
+            shared = sample_to_target(
+                some, targets.part(part), variogram, filtered=filtered, room=room
+            )
+            mean, spread = system.predict(shared, own, room)
             estimate[part] += weight[part, None] * mean
             variance[part] += weight[part] * spread
 

@@ -6,10 +6,15 @@ The bytes of a result then depend neither on the number of cores nor on how BLAS
 from __future__ import annotations
 
 import os
+import threading
 from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from contextlib import contextmanager
 from typing import TypeVar
+
+import numpy as np
+
+from schorl.model.arrays import Floats
 
 Part = TypeVar("Part")
 MOST_THREADS = 8
@@ -42,3 +47,22 @@ def for_each(parts: Sequence[Part], work: Callable[[Part], None]) -> None:
     with ThreadPoolExecutor(max_workers=count) as pool:
         for _ in pool.map(work, parts):
             pass
+
+
+class Room(threading.local):
+    """Arrays that each thread uses again and again.
+
+    A fresh array of some megabytes is handed out by the system page by page, which takes longer
+    than the sums done in it.
+    """
+
+    def __init__(self) -> None:
+        self._kept: dict[str, Floats] = {}
+
+    def array(self, name: str, shape: tuple[int, int]) -> Floats:
+        """The thread's array of this name, as large as asked; it holds whatever it held."""
+        size = shape[0] * shape[1]
+        kept = self._kept.get(name)
+        if kept is None or kept.size < size:
+            kept = self._kept[name] = np.empty(size)
+        return kept[:size].reshape(shape)
