@@ -1,31 +1,22 @@
-"""The pack: everything a run leaves, whole or absent.
-
-Written into a hidden folder beside the target, read back by other readers, synced, and only then
-renamed. With ``replace`` the old pack is renamed aside first; whatever moment a run is killed at,
-the next command finds either name and completes or undoes the swap.
-"""
+"""The pack: everything a run leaves, whole or absent, read back by other readers."""
 
 from __future__ import annotations
 
-import hashlib
 import json
-import os
-import shutil
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from schorl.errors import OutputProblem, Refusal, SchorlError, UsageProblem
+from schorl.errors import OutputProblem, Refusal, SchorlError
 from schorl.findings import finding
-from schorl.formats.writing import safe_name, sync_folder, write_synced
+from schorl.formats.whole_folder import Rows, complete_swaps, listed, put_folder, sha256_of
+from schorl.formats.writing import safe_name
 from schorl.geodesy import WGS84
 from schorl.model.record import RunRecord
 from schorl.model.summary import SCHEMA, summary
 
 __all__ = ["PackContents", "PackWritten", "complete_swaps", "read_pack", "safe_name", "write_pack"]
-
-ASIDE, BESIDE, LOCK = ".old-pack", ".new-pack", ".lock"
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -82,74 +73,16 @@ def write_pack(
     OutputProblem
         Writing failed, or a file reads back differently (exit 5); nothing is left behind.
     """
-    complete_swaps(folder)
-    if folder.exists() and not replace:
-        what = "there is a pack already; nothing was written"
-        raise UsageProblem([finding("OUT-THERE", where=str(folder), what=what)])
-    try:
-        folder.parent.mkdir(parents=True, exist_ok=True)
-        with _Lock(folder):
-            return _write_beside(record, folder, extras)
-    except OSError as reason:
-        what = f"cannot be written: {reason.strerror or reason}"
-        raise OutputProblem([finding("OUT-WRITE", where=str(folder), what=what)]) from None
 
-
-class _Lock:
-    """Only one run writes a pack at a time; a dead run's lock does not hold."""
-
-    def __init__(self, folder: Path) -> None:
-        self.path = folder.with_name(f".{folder.name}{LOCK}")
-
-    def __enter__(self) -> None:
-        for _ in range(2):
-            try:
-                write_synced(self.path, str(os.getpid()).encode())
-                return
-            except FileExistsError:
-                if _alive(self.path):
-                    what = "another run is writing this pack"
-                    raise OutputProblem(
-                        [finding("OUT-BUSY", where=str(self.path), what=what)]
-                    ) from None
-                self.path.unlink(missing_ok=True)
-        raise OutputProblem(
-            [finding("OUT-BUSY", where=str(self.path), what="the lock stays taken")]
-        )
-
-    def __exit__(self, *_: object) -> None:
-        self.path.unlink(missing_ok=True)
-
-
-def _alive(lock: Path) -> bool:
-    try:
-        number = int(lock.read_text(encoding="ascii") or "0")
-        os.kill(number, 0)
-    except (ValueError, ProcessLookupError, FileNotFoundError):
-        return False
-    except OSError:  # not ours to signal: it lives
-        return True
-    return number > 0
-
-
-def _write_beside(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -> PackWritten:
-    beside = folder.with_name(f".{folder.name}{BESIDE}")
-    shutil.rmtree(beside, ignore_errors=True)
-    beside.mkdir(mode=0o700)
-    try:
+    def fill(beside: Path) -> Rows:
         _write_files(record, beside, extras)
-        files = _listed(beside)
-        _write_json(beside / "manifest.json", _manifest(record, files))
+        files = listed(beside)
+        write_json(beside / "manifest.json", _manifest(record, files))
         _read_back(beside)
-        _sync_all(beside)
-        beside.chmod(0o755)
-        _move_in(beside, folder)
-    except BaseException:
-        shutil.rmtree(beside, ignore_errors=True)
-        raise
-    manifest = folder / "manifest.json"
-    row = ("manifest.json", manifest.stat().st_size, _sha256(manifest.read_bytes()))
-    return PackWritten(folder=folder, files=(*files, row))
+        data = (beside / "manifest.json").read_bytes()
+        return (*files, ("manifest.json", len(data), sha256_of(data)))
+
+    return PackWritten(folder=folder, files=put_folder(folder, fill, replace=replace))
 
 
 def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -> None:
@@ -173,10 +106,11 @@ def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -
     write_surfaces(folder / "surfaces", record)
     for name, data in extras.items():
         (folder / name).write_bytes(data)
-    _write_json(folder / "summary.json", summary(record))
+    write_json(folder / "summary.json", summary(record))
 
 
-def _write_json(path: Path, document: Mapping[str, Any]) -> None:
+def write_json(path: Path, document: Mapping[str, Any]) -> None:
+    """Write a JSON document with sorted keys and nothing JSON does not know."""
     text = json.dumps(document, indent=1, sort_keys=True, allow_nan=False, ensure_ascii=False)
     path.write_bytes((text + "\n").encode("utf-8"))
 
@@ -197,7 +131,7 @@ def _manifest(record: RunRecord, files: Sequence[tuple[str, int, str]]) -> dict[
 def _plain(value: Any) -> Any:
     """Settings as JSON; geometries by their checksum."""
     if hasattr(value, "wkb"):
-        return f"geometry {_sha256(value.wkb)[:16]}"
+        return f"geometry {sha256_of(value.wkb)[:16]}"
     if hasattr(value, "__dataclass_fields__"):
         return {name: _plain(getattr(value, name)) for name in value.__dataclass_fields__}
     if isinstance(value, Mapping):
@@ -207,20 +141,6 @@ def _plain(value: Any) -> Any:
     if hasattr(value, "isoformat"):
         return value.isoformat()
     return value if isinstance(value, str | int | float | bool | None) else str(value)
-
-
-def _listed(folder: Path) -> tuple[tuple[str, int, str], ...]:
-    paths = sorted(one for one in folder.rglob("*") if one.is_file())
-    rows = []
-    for path in paths:
-        path.chmod(0o644)
-        data = path.read_bytes()
-        rows.append((path.relative_to(folder).as_posix(), len(data), _sha256(data)))
-    return tuple(rows)
-
-
-def _sha256(data: bytes) -> str:
-    return hashlib.sha256(data).hexdigest()
 
 
 def _read_back(folder: Path) -> None:
@@ -234,48 +154,6 @@ def _read_back(folder: Path) -> None:
                 for fault in seen.faults
             ]
         )
-
-
-def _sync_all(folder: Path) -> None:
-    for path in sorted(folder.rglob("*")):
-        if path.is_file():
-            with path.open("rb+") as stream:
-                os.fsync(stream.fileno())
-    for path in [*[one for one in folder.rglob("*") if one.is_dir()], folder]:
-        sync_folder(path)
-
-
-def _move_in(beside: Path, folder: Path) -> None:
-    aside = folder.with_name(f".{folder.name}{ASIDE}")
-    if folder.exists():
-        folder.rename(aside)
-        try:
-            beside.rename(folder)
-        except BaseException:
-            aside.rename(folder)
-            raise
-    else:
-        beside.rename(folder)
-    sync_folder(folder.parent)
-    shutil.rmtree(aside, ignore_errors=True)
-
-
-def complete_swaps(folder: Path) -> None:
-    """Finish or undo a swap that a killed run left: afterwards the old or new pack stands whole."""
-    aside = folder.with_name(f".{folder.name}{ASIDE}")
-    if not folder.name or not aside.is_dir():
-        return
-    if _busy(folder):
-        return
-    if folder.exists():
-        shutil.rmtree(aside, ignore_errors=True)
-    else:
-        aside.rename(folder)
-
-
-def _busy(folder: Path) -> bool:
-    lock = folder.with_name(f".{folder.name}{LOCK}")
-    return lock.exists() and _alive(lock)
 
 
 def read_pack(folder: Path) -> PackContents:

@@ -6,7 +6,7 @@ import io
 import json
 import struct
 import zipfile
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -16,7 +16,7 @@ import shapely
 from schorl.errors import OutputProblem
 from schorl.findings import finding
 from schorl.formats.shapes import ZoneShape, attributes, boundary_degrees
-from schorl.geodesy import WGS84, transform_points
+from schorl.geodesy import WGS84, transform_geometry, transform_points
 from schorl.model.record import RunRecord
 
 LARGEST_RATE = 9_999_999.99  # what N(10,2) holds
@@ -118,7 +118,6 @@ def zip_bytes(members: dict[str, bytes]) -> bytes:
 def write_geopackage(path: Path, record: RunRecord, shapes: Iterable[ZoneShape]) -> None:
     """Zones, samples and boundary as layers of one GeoPackage 1.2."""
     import geopandas
-    import pyogrio
 
     samples = record.samples
     degrees = transform_points(samples.east_north_m, source=record.field.crs, target=WGS84)
@@ -138,6 +137,26 @@ def write_geopackage(path: Path, record: RunRecord, shapes: Iterable[ZoneShape])
             crs=WGS84,
         ),
     }
+    areas = [(name, area) for name, area in zip(samples.ids, samples.areas, strict=True) if area]
+    if areas:
+        layers["sample_areas"] = geopandas.GeoDataFrame(
+            [{"sample": quoted(name)} for name, _ in areas],
+            geometry=[
+                transform_geometry(
+                    shapely.multipolygons(shapely.get_parts(area)), source=record.field.crs,
+                    target=WGS84,
+                )
+                for _, area in areas
+            ],
+            crs=WGS84,
+        )  # fmt: skip
+    write_layers(path, layers)
+
+
+def write_layers(path: Path, layers: Mapping[str, Any]) -> None:
+    """Write frames as layers of one GeoPackage 1.2, without a clock in its bytes."""
+    import pyogrio
+
     pyogrio.set_gdal_config_options({"OGR_CURRENT_DATE": FIXED_MOMENT})
     try:
         for place, (name, frame) in enumerate(layers.items()):

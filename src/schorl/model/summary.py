@@ -118,6 +118,7 @@ def _samples(record: RunRecord) -> dict[str, Any]:
         "sampled_on": _json(campaign.sampled_on),
         "laboratory": campaign.laboratory,
         "per_volume": campaign.per_volume,
+        "lab_relative_sd": campaign.lab_relative_sd,
         "properties": {
             name: {
                 "unit": PROPERTY_UNITS.get(name, ""),
@@ -180,8 +181,15 @@ def _zone(record: RunRecord, place: int) -> dict[str, Any]:
         "chance_over_before": outlook["over_before"],
         "loss_kg": outlook["loss_kg"],
         "sureness": sureness[place] if place < len(sureness) else None,
+        "soil_mass_kg_ha_per_mg_kg": _soil_mass(record, place),
     }
     return row
+
+
+def _soil_mass(record: RunRecord, place: int) -> float | None:
+    """Mean over a zone's cells of kg B/ha for 1 mg/kg; None for a zone without a cell."""
+    cells = record.prescription.zone_map.labels == place
+    return plain(record.cell_need.mass_need[cells].mean()) if cells.any() else None
 
 
 def _zoning(zone_map: ZoneMap) -> dict[str, Any]:
