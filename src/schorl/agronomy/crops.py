@@ -66,3 +66,9 @@ def _crop(row: Row) -> Crop:
         perennial=row["perennial"] == "yes",
         status=row["status"],
     )
+
+
+def removal_g_t(name: str) -> float | None:
+    """Boron that a tonne of harvest of a crop takes away, grams; None where no row says."""
+    wanted = crop_named(name).name
+    return next((float(row["g_b_t"]) for row in table("removal") if row["id"] == wanted), None)

@@ -165,7 +165,7 @@ def _samples(
     names = [str(row["sample"]) for row in table]
     kinds = [str(row["kind"]) for row in table]
     known = [kind != "zone" or name in areas for kind, name in zip(kinds, names, strict=True)]
-    notes = ()
+    notes: tuple[Finding, ...] = ()
     if not all(known):
         what = f"{known.count(False)} composites without their areas"
         notes = (finding("SEASON-AREAS", where=folder.name, what=what),)
@@ -175,9 +175,7 @@ def _samples(
         properties={
             name: _measured(table, name) for name in said["properties"] if name in PROPERTY_UNITS
         },
-        kind=tuple(
-            kind if whole else "point" for kind, whole in zip(kinds, known, strict=True)
-        ),
+        kind=tuple(kind if whole else "point" for kind, whole in zip(kinds, known, strict=True)),
         cores=np.array([int(row["cores"]) for row in table], dtype=np.intp),
         campaign=_campaign(said),
         areas=tuple(areas.get(name) for name in names),

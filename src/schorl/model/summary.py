@@ -48,15 +48,15 @@ def summary(record: RunRecord) -> dict[str, Any]:
             "boron_pct": prescription.boron_pct,
             "boron_g_l": prescription.boron_g_l,
         },
-        "outlook": _fields(prescription.field_outlook),
-        "value": [_fields(plan) for plan in prescription.value],
+        "outlook": plain_fields(prescription.field_outlook),
+        "value": [plain_fields(plan) for plan in prescription.value],
         "saving": None if prescription.saving is None else list(prescription.saving),
         "machine": _machine(record),
         "advice": list(prescription.advice),
         "findings": [finding_row(found) for found in record.findings],
-        "recognised": [_fields(one) for one in record.recognised],
+        "recognised": [plain_fields(one) for one in record.recognised],
         "assumptions": list(record.assumptions),
-        "overrides": [_fields(one) for one in record.settings.overrides],
+        "overrides": [plain_fields(one) for one in record.settings.overrides],
         "sources": [dict(row) for row in prescription.sources],
         "adapted_from": record.adapted_from,
     }
@@ -74,7 +74,7 @@ def finding_row(found: Any) -> dict[str, Any]:
     }
 
 
-def _fields(value: Any) -> dict[str, Any]:
+def plain_fields(value: Any) -> dict[str, Any]:
     """The fields of a small frozen value; NaN becomes None, enumerations become words."""
     return {name: _json(getattr(value, name)) for name in value.__dataclass_fields__}
 
@@ -93,7 +93,7 @@ def _json(value: Any) -> Any:
     if hasattr(value, "isoformat"):
         return value.isoformat()
     if hasattr(value, "__dataclass_fields__"):
-        return _fields(value)
+        return plain_fields(value)
     return float(value)
 
 
@@ -170,7 +170,7 @@ def _zone(record: RunRecord, place: int) -> dict[str, Any]:
     rate = prescription.rates[place]
     zone = prescription.zone_map.zones[place]
     sureness = prescription.zone_map.sureness
-    row = _fields(rate)
+    row = plain_fields(rate)
     outlook = row.pop("outlook")
     row |= {
         "kind": str(zone.kind),
@@ -201,11 +201,11 @@ def _zoning(zone_map: ZoneMap) -> dict[str, Any]:
         "structure_p": zone_map.structure_p,
         "classes_found": zone_map.classes_found,
         "too_narrow_ha": zone_map.too_narrow_ha,
-        "table": [_fields(row) for row in zone_map.table],
+        "table": [plain_fields(row) for row in zone_map.table],
         "retired_numbers": list(zone_map.retired_numbers),
     }
 
 
 def _machine(record: RunRecord) -> dict[str, Any]:
     plan = record.prescription.machine
-    return _fields(plan)
+    return plain_fields(plan)

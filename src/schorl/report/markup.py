@@ -95,5 +95,5 @@ def _is_figure(cell: object) -> bool:
     return (
         not isinstance(cell, Safe)
         and len(str(cell)) < 24
-        and str(cell)[:1] in set("0123456789-−–<±")
+        and str(cell)[:1] in set("0123456789-−–<±+·")
     )

@@ -10,7 +10,7 @@ import shapely
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.geodesy import area_ha
-from schorl.model.arrays import Counts
+from schorl.model.arrays import Counts, Floats
 from schorl.model.change import (
     ChangeMap,
     SeasonChange,
@@ -151,7 +151,7 @@ def _are_paired(pairs: SitePairs, before: SampleSet, after: SampleSet) -> bool:
     return len(pairs) >= 2 and len(pairs) >= PAIRED_SHARE * smaller
 
 
-def _boron(samples: SampleSet) -> np.ndarray:
+def _boron(samples: SampleSet) -> Floats:
     return samples.properties["boron"].values[measured(samples)]
 
 
@@ -192,8 +192,9 @@ def _zone_data(
     ]
 
 
-def _in_zone(samples: SampleSet, of_site: Counts, place: int) -> np.ndarray:
-    return samples.properties["boron"].values[measured(samples) & (of_site == place)]
+def _in_zone(samples: SampleSet, of_site: Counts, place: int) -> Floats:
+    chosen: Floats = samples.properties["boron"].values[measured(samples) & (of_site == place)]
+    return chosen
 
 
 def _pair_error(before: SeasonPack, after: SeasonPack, pairs: SitePairs) -> float | None:

@@ -7,8 +7,9 @@ known error of a composite where a zone has one sample; Holm's correction over t
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from scipy import stats
@@ -105,7 +106,7 @@ def field_shift(before: Floats, after: Floats, *, paired: bool) -> Shift | None:
 def _warning(relative: float, in_sd: float) -> str:
     turn = "up" if relative > 0 else "down"
     return (
-        f"the whole field went {turn} by {abs(relative):.0%} ({abs(in_sd):.1f} standard deviations "
+        f"the whole field went {turn} by {100 * abs(relative):.0f} % ({abs(in_sd):.1f} standard deviations "
         "of the earlier samples): soils hardly do that; laboratory, method, depth or time of "
         "sampling may have moved instead"
     )
@@ -146,7 +147,7 @@ def zone_changes(data: Sequence[ZoneData], *, doubted: bool) -> tuple[ZoneChange
     """Test every zone that has enough samples; none is called real where the shift is doubted."""
     tested = [_tested(one) for one in data]
     known = [found.p for found, _ in tested if found is not None]
-    adjusted = iter(holm(known)) if known else iter(())
+    adjusted: Iterator[float] = iter(holm(known)) if known else iter(())
     rows = []
     for one, (found, test) in zip(data, tested, strict=True):
         rows.append(_row(one, found, test, adjusted=adjusted, doubted=doubted))
@@ -165,9 +166,9 @@ def _tested(one: ZoneData) -> tuple[MeanChange | None, str]:
 
 
 def _row(
-    one: ZoneData, found: MeanChange | None, test: str, *, adjusted: object, doubted: bool
+    one: ZoneData, found: MeanChange | None, test: str, *, adjusted: Iterator[float], doubted: bool
 ) -> ZoneChange:
-    means = {
+    means: dict[str, Any] = {
         "before": float(one.before.mean()) if len(one.before) else NAN,
         "after": float(one.after.mean()) if len(one.after) else NAN,
         "samples": len(one.after),
@@ -179,7 +180,7 @@ def _row(
             **means, change=NAN, low=NAN, high=NAN, p=NAN, p_adjusted=NAN, real=False,
             least_detectable=NAN,
         )  # fmt: skip
-    p_adjusted = float(next(adjusted))  # type: ignore[call-overload]
+    p_adjusted = float(next(adjusted))
     return ZoneChange(
         **means, change=found.change, low=found.low, high=found.high, p=found.p,
         p_adjusted=p_adjusted, real=bool(p_adjusted <= ALPHA) and not doubted,

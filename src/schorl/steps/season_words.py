@@ -18,6 +18,11 @@ def in_words(change: SeasonChange) -> str:
     return " ".join(one for one in said if one)
 
 
+def per_cent(share: float) -> str:
+    """A share as a whole per cent."""
+    return f"{100 * share:.0f} %"
+
+
 def _seasons(change: SeasonChange) -> str:
     return f"From {change.before.season} to {change.after.season}"
 
@@ -70,8 +75,8 @@ def _ground(change: SeasonChange) -> str:
     moved = change.moved
     if moved.moved_ha < 0.01:
         return "The zones lie where they lay."
-    share = moved.moved_ha / change.common_ha
-    said = f"{moved.moved_ha:.1f} ha ({share:.0%}) lie in another zone than before"
+    share = per_cent(moved.moved_ha / change.common_ha)
+    said = f"{moved.moved_ha:.1f} ha ({share}) lie in another zone than before"
     chance = moved.by_chance[0]
     if np.isfinite(chance):
         if moved.kappa >= chance - 0.1:
@@ -91,8 +96,8 @@ def _recovery(change: SeasonChange) -> str:
             said.append(f"zone {one.zone}: cannot be told")
         else:
             said.append(
-                f"zone {one.zone}: {one.recovery:.0%} ({one.recovery_low:.0%} to "
-                f"{one.recovery_high:.0%})"
+                f"zone {one.zone}: {per_cent(one.recovery)} ({100 * one.recovery_low:.0f} to "
+                f"{per_cent(one.recovery_high)})"
             )
     return "Of the boron given, the next test shows: " + "; ".join(said) + "."
 

@@ -65,7 +65,7 @@ def zones_moved(
 
 
 def _clipped(zone: SeasonZone, common: Area) -> Area:
-    return shapely.intersection(zone.area, common)  # type: ignore[no-any-return]
+    return shapely.intersection(zone.area, common)
 
 
 def _moved(
