@@ -3,6 +3,7 @@
 python scripts/quality.py zones      flat or zones: decisions on fresh simulated fields
 python scripts/quality.py surfaces   map quality beside PyKrige and a least-squares variogram
 python scripts/quality.py censored   values below the limit: draws against half the limit
+python scripts/quality.py seasons    changes found and invented, on simulated pairs of seasons
 """
 
 from __future__ import annotations
@@ -13,7 +14,7 @@ from pathlib import Path
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-PARTS = ("zones", "surfaces", "censored")
+PARTS = ("zones", "surfaces", "censored", "seasons")
 
 
 def main(arguments: list[str]) -> int:

@@ -11,7 +11,7 @@ from pathlib import Path
 import pytest
 
 from schorl.errors import OutputProblem, UsageProblem
-from schorl.formats import pack as packing
+from schorl.formats import whole_folder
 from schorl.formats.pack import complete_swaps, write_pack
 from schorl.formats.verify import verify
 from support.example_record import example_record
@@ -117,7 +117,7 @@ def test_a_swap_cut_in_the_middle_is_undone_or_completed(record, tmp_path):
     folder = tmp_path / "p"
     write_pack(record, folder, extras=EXTRAS, replace=False)
     before = fingerprint(folder)
-    folder.rename(tmp_path / f".p{packing.ASIDE}")
+    folder.rename(tmp_path / f".p{whole_folder.ASIDE}")
     complete_swaps(folder)
     assert fingerprint(folder) == before
 
@@ -138,7 +138,7 @@ def test_a_file_that_reads_back_differently_is_not_kept(record, tmp_path, monkey
 
 
 def test_a_second_run_is_refused_while_one_writes(record, tmp_path):
-    lock = tmp_path / f".p{packing.LOCK}"
+    lock = tmp_path / f".p{whole_folder.LOCK}"
     lock.write_text(str(os.getpid()), encoding="ascii")
     with pytest.raises(OutputProblem, match="another run"):
         write_pack(record, tmp_path / "p", extras=EXTRAS, replace=False)

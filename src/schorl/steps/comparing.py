@@ -37,7 +37,7 @@ from schorl.steps.season_strips import check_strips
 from schorl.steps.season_tests import ZoneData, field_shift, least_detectable, zone_changes
 from schorl.steps.season_turned import turned
 from schorl.steps.season_words import in_words
-from schorl.steps.season_zones import rate_changes, zones_moved
+from schorl.steps.season_zones import DRAWS, rate_changes, zones_moved
 from schorl.zoning.sampled import composite_error_mg_kg
 
 #: Depths of sampling that differ by more (cm) are not the same soil (a choice).
@@ -53,6 +53,7 @@ def compare(
     *,
     seed: int = 0,
     same_place_m: float = SAME_PLACE_M,
+    draws: int = DRAWS,
     progress: Progress = silent,
 ) -> SeasonChange:
     """Compare two seasons of one field.
@@ -66,24 +67,34 @@ def compare(
         Packs in one metric system.
     same_place_m
         Sites this close are the same site.
+    draws
+        Times that sampling again is simulated, to say what moves zones by chance; 0 for never.
 
     Raises
     ------
     Refusal
         The fields share no ground (exit 4).
     """
-    if before.when > after.when:
-        return turned(_compare(after, before, seed, same_place_m, progress))
-    return _compare(before, after, seed, same_place_m, progress)
+    backwards = before.when > after.when
+    first, second = (after, before) if backwards else (before, after)
+    pairs = site_pairs(first.samples, second.samples, same_place_m=same_place_m)
+    random = np.random.default_rng([seed, 8])
+    change = _compare(first, second, pairs, random=random, draws=draws, progress=progress)
+    return turned(change) if backwards else change
 
 
 def _compare(
-    before: SeasonPack, after: SeasonPack, seed: int, same_place_m: float, progress: Progress
+    before: SeasonPack,
+    after: SeasonPack,
+    pairs: SitePairs,
+    *,
+    random: np.random.Generator,
+    draws: int,
+    progress: Progress,
 ) -> SeasonChange:
     common = _common_ground(before, after)
     same = before.identity == after.identity
     progress("comparing", 0, 3)
-    pairs = site_pairs(before.samples, after.samples, same_place_m=same_place_m)
     refused = _not_comparable(before.samples, after.samples)
     paired = _are_paired(pairs, before.samples, after.samples)
     shift = None if refused else _shift(pairs, before.samples, after.samples, paired=paired)
@@ -93,7 +104,7 @@ def _compare(
     progress("comparing", 1, 3)
     mapped, no_map = _map(before, after, common, pairs, refused=refused, doubted=doubted)
     progress("comparing", 2, 3)
-    moved = zones_moved(before, after, common, random=np.random.default_rng([seed, 8]))
+    moved = zones_moved(before, after, common, random=random, draws=draws)
     sd_of_change = float(pairs.change_mg_kg.std(ddof=1)) if len(pairs) > 2 and not same else NAN
     found = _findings(before, after, common, pairs, shift, refused)
     change = SeasonChange(

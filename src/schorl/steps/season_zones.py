@@ -33,7 +33,12 @@ LEAST_MOVED_HA = 0.01
 
 
 def zones_moved(
-    before: SeasonPack, after: SeasonPack, common: Area, *, random: np.random.Generator
+    before: SeasonPack,
+    after: SeasonPack,
+    common: Area,
+    *,
+    random: np.random.Generator,
+    draws: int = DRAWS,
 ) -> ZonesMoved:
     """Match the zones of two packs on their common ground, by overlap (Hungarian method).
 
@@ -60,7 +65,7 @@ def zones_moved(
         kappa=kappa(square),
         quantity=quantity,
         allocation=allocation,
-        by_chance=agreement_by_chance(before, random=random),
+        by_chance=agreement_by_chance(before, random=random, draws=draws),
     )
 
 
@@ -124,7 +129,7 @@ def rate_changes(
 
 
 def agreement_by_chance(
-    pack: SeasonPack, *, random: np.random.Generator, draws: int = DRAWS
+    pack: SeasonPack, *, random: np.random.Generator, draws: int
 ) -> tuple[float, float]:
     """Kappa and adjusted Rand index that sampling the same sites again would give, nothing changed.
 
@@ -135,7 +140,7 @@ def agreement_by_chance(
     """
     nothing = float("nan"), float("nan")
     count = sum(zone.kind == ZONE for zone in pack.zones)
-    if pack.origin != "clusters" or count < 2 or "boron" not in pack.surfaces:
+    if pack.origin != "clusters" or count < 2 or "boron" not in pack.surfaces or draws < 1:
         return nothing
     varying = {name: one for name, one in pack.surfaces.items() if np.ptp(one) > 0}
     again = {name: _sampled_again(pack, name, random, draws) for name in varying}
