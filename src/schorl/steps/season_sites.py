@@ -30,9 +30,9 @@ def measured(samples: SampleSet) -> Flags:
 def site_pairs(
     before: SampleSet, after: SampleSet, *, same_place_m: float = SAME_PLACE_M
 ) -> SitePairs:
-    """Sites sampled in both seasons: each other's nearest within ``same_place_m``.
+    """Sites sampled in both seasons: within ``same_place_m``, the nearest pairs first.
 
-    Composites of sample zones are paired by their areas, single samples by their places; never one
+    No site has two partners. Composites of sample zones are paired by their areas, single samples by their places; never one
     with the other.
     """
     found = [*_paired_points(before, after, same_place_m), *_paired_areas(before, after)]
@@ -59,13 +59,14 @@ def _paired_points(before: SampleSet, after: SampleSet, reach: float) -> list[tu
     if not len(first) or not len(second):
         return []
     places, others = before.east_north_m[first], after.east_north_m[second]
-    gap, near = cKDTree(others).query(places)
-    _, back = cKDTree(places).query(others)
-    return [
-        (int(first[place]), int(second[near[place]]))
-        for place in range(len(first))
-        if gap[place] <= reach and back[near[place]] == place
-    ]
+    near = cKDTree(places).sparse_distance_matrix(cKDTree(others), reach, output_type="ndarray")
+    found: dict[int, int] = {}
+    taken: set[int] = set()
+    for one, other in near[np.lexsort((near["j"], near["i"], near["v"]))][["i", "j"]].tolist():
+        if int(first[one]) not in found and other not in taken:
+            found[int(first[one])] = int(second[other])
+            taken.add(other)
+    return list(found.items())
 
 
 def _paired_areas(before: SampleSet, after: SampleSet) -> list[tuple[int, int]]:
