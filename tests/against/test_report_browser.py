@@ -5,11 +5,7 @@ Skipped where the browser is absent; the accessibility check also where axe-core
 
 from __future__ import annotations
 
-import os
-import shutil
-import tempfile
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -17,18 +13,14 @@ import shapely
 
 from schorl.report.layers import boron_range, layers_of, short_before
 from schorl.report.page import report_page
+from support.browser import axe_faults, needs_chromium
 from support.example_record import example_record
 
-playwright = pytest.importorskip("playwright.sync_api", reason="Playwright is not installed")
-
-CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
-NODE = Path(os.environ.get("SCHORL_NODE_MODULES") or Path(tempfile.gettempdir()) / "schorl-node")
-AXE = NODE / "node_modules" / "axe-core" / "axe.min.js"
 READY = "#map[data-ready=yes]"
 NASTY = "</script><script>document.title='taken'</script><img src=x onerror=\"document.title='x'\">"
 
 pytestmark = [
-    pytest.mark.skipif(CHROMIUM is None, reason="Debian's chromium is not installed"),
+    needs_chromium,
     pytest.mark.filterwarnings("ignore::rasterio.errors.NotGeoreferencedWarning"),
 ]
 
@@ -52,37 +44,14 @@ def page_file(record, tmp_path_factory):
     return path
 
 
-@pytest.fixture(scope="module")
-def browser():
-    with playwright.sync_playwright() as driver:
-        made = driver.chromium.launch(
-            executable_path=CHROMIUM, args=["--no-sandbox", "--disable-gpu"]
-        )
-        yield made
-        made.close()
-
-
 @pytest.fixture
-def opened(browser):
-    """Open a file in a fresh page that keeps every request and complaint."""
-    contexts = []
+def opened(opened):
+    """Open a report and wait until its script has read the facts."""
 
-    def open_file(path: Path, **settings):
-        context = browser.new_context(**settings)
-        contexts.append(context)
-        page = context.new_page()
-        page.asked, page.said = [], []
-        page.on("request", lambda request: page.asked.append(request.url))
-        page.on("console", lambda message: page.said.append(message.text))
-        page.on("pageerror", lambda error: page.said.append(str(error)))
-        page.goto(path.as_uri())
-        if settings.get("java_script_enabled", True):
-            page.locator(READY).wait_for()
-        return page
+    def open_ready(path, **settings):
+        return opened(path, ready=READY, **settings)
 
-    yield open_file
-    for context in contexts:
-        context.close()
+    return open_ready
 
 
 def on_screen(page, record, cell: int) -> tuple[float, float]:
@@ -309,19 +278,10 @@ def test_text_from_files_runs_nothing(opened, record, tmp_path):
     ids=["desktop", "phone", "print"],
 )
 def test_axe_finds_no_fault(opened, page_file, record, settings):
-    if not AXE.is_file():
-        pytest.skip(f"axe-core is not at {AXE.parent}; npm install axe-core there")
     page = opened(page_file, viewport=settings["viewport"])
     media = settings.get("media")
     if media:
         page.emulate_media(media=media)
     else:
         page.mouse.move(*on_screen(page, record, 500))
-    page.evaluate(AXE.read_text(encoding="utf-8"))
-    tags = ["wcag2a", "wcag2aa", "wcag21a", "wcag21aa", "wcag22aa", "best-practice"]
-    found = page.evaluate(
-        "tags => axe.run(document, {runOnly: tags}).then(r => r.violations.map("
-        "v => [v.id, v.impact, v.nodes.map(n => n.html.slice(0, 160)).slice(0, 3)]))",
-        tags,
-    )
-    assert found == []
+    assert axe_faults(page) == []

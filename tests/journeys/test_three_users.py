@@ -9,24 +9,14 @@ from __future__ import annotations
 
 import csv
 import json
-import subprocess
-import sys
 from pathlib import Path
 
 import numpy as np
 import pandas as pd
 import pytest
 
+from support.command import FIELDS, run
 from support.data import lime_soda
-
-FIELDS = Path(__file__).resolve().parents[2] / "sample_fields"
-
-
-def run(*arguments):
-    command = [sys.executable, "-m", "schorl", *map(str, arguments), "--json"]
-    done = subprocess.run(command, capture_output=True, text=True, encoding="utf-8", check=False)
-    assert "Traceback" not in done.stderr
-    return done.returncode, json.loads(done.stdout)
 
 
 @pytest.mark.parametrize(

@@ -151,9 +151,7 @@ def _not_comparable(before: SampleSet, after: SampleSet) -> str:
     if first.per_volume != second.per_volume:
         return "one laboratory reports per kilogram of soil, the other per litre"
     if abs(first.depth_cm - second.depth_cm) > SAME_DEPTH_CM:
-        return (
-            f"samples reach {first.depth_cm:g} cm in one season, {second.depth_cm:g} in the other"
-        )
+        return f"samples reach {first.depth_cm:g} cm in one season, {second.depth_cm:g} cm in the other"
     return ""
 
 

@@ -1,0 +1,188 @@
+"""The agronomist's way: two seasons of the sample field, compared by command and read back."""
+
+from __future__ import annotations
+
+import csv
+import json
+import shutil
+import sqlite3
+import subprocess
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from support.command import FIELDS, run
+
+OUTLINE = FIELDS / "long_acre/2026/boundary.geojson"
+
+
+@pytest.fixture(scope="module")
+def packs(tmp_path_factory):
+    folder = tmp_path_factory.mktemp("packs")
+    for season in ("2025", "2026"):
+        code, answer = run("prescribe", FIELDS / "long_acre" / season, "--out", folder)
+        assert code == 0, answer["findings"]
+    return folder
+
+
+def compare(packs, *names, out, **_):
+    return run("compare", *(packs / name for name in names), "--out", out)
+
+
+@pytest.fixture(scope="module")
+def compared(packs, tmp_path_factory):
+    out = tmp_path_factory.mktemp("change")
+    code, answer = compare(packs, "Long-Acre-2025", "Long-Acre-2026", out=out)
+    assert code == 0, answer["findings"]
+    return answer["result"]
+
+
+def test_it_says_what_is_real_what_is_noise_and_what_to_do(compared):
+    assert compared["same"] is False
+    shift = compared["shift"]
+    assert shift["low"] < shift["mean"] < shift["high"]
+    assert shift["warning"] == ""
+    for zone in compared["zones"]:
+        if zone["real"]:
+            assert zone["p_adjusted"] <= 0.05
+            assert zone["low"] > 0 or zone["high"] < 0
+    assert any(zone["real"] for zone in compared["zones"])
+    assert not all(zone["real"] for zone in compared["zones"])
+    for word in ("Real:", "noise", "To do:"):
+        assert word in compared["text"]
+    assert compared["least_detectable_mg_kg"] > 0
+    table = np.array(compared["zones_matched"]["transition_ha"])
+    assert table.sum() == pytest.approx(compared["common_ha"], rel=2e-3)
+
+
+def test_balance_counts_what_was_prescribed_and_says_so(packs, compared):
+    summary = json.loads((packs / "Long-Acre-2025/summary.json").read_text("utf-8"))
+    rates = {zone["zone"]: zone["boron_kg_ha"] for zone in summary["zones"]}
+    for row in compared["balance"]:
+        assert row["applied"] == pytest.approx(rates[row["zone"]])
+        if row["recovery"] is not None:
+            assert row["recovery"] == pytest.approx(row["change"] / row["applied"])
+    assert "SEASON-APPLIED" in {one["code"] for one in compared["findings"]}
+
+
+def test_other_readers_find_the_same(compared):
+    folder = Path(compared["written"]["folder"])
+    sites = list(csv.DictReader((folder / "revisit_sites.csv").read_text("utf-8").splitlines()))
+    assert [one["site"] for one in sites] == [one["name"] for one in compared["revisit"]]
+    import rasterio
+
+    with rasterio.open(folder / "change.tif") as raster:
+        assert raster.count == 3
+        change, inside = raster.read(1), raster.read_masks(1) > 0
+        real = (raster.read(3)[inside] <= 0.10).sum() * abs(raster.transform.a) ** 2 / 1e4
+    assert change[inside].min() == pytest.approx(compared["change_map"]["lowest_mg_kg"], rel=1e-5)
+    assert real == pytest.approx(compared["change_map"]["real_ha"])
+    with sqlite3.connect(folder / "zones_moved.gpkg") as package:
+        assert package.execute("pragma integrity_check").fetchone() == ("ok",)
+        total = package.execute("select sum(area_ha) from moved").fetchone()[0]
+    assert total == pytest.approx(compared["moved_ha"])
+    strips = json.loads((folder / "check_strips.geojson").read_text("utf-8"))
+    assert {one["properties"]["kind"] for one in strips["features"]} == {"untreated", "doubled"}
+    if shutil.which("ogrinfo"):
+        command = ["ogrinfo", "-so", "-al", folder / "revisit_sites.geojson"]
+        said = subprocess.run(command, capture_output=True, text=True, check=True)
+        assert f"Feature Count: {len(sites)}" in said.stdout
+
+
+def test_backwards_and_with_itself(packs, compared, tmp_path):
+    code, answer = compare(packs, "Long-Acre-2026", "Long-Acre-2025", out=tmp_path)
+    back = answer["result"]
+    assert code == 0
+    assert [one["change"] for one in back["zones"] if one["change"]] == [
+        -one["change"] for one in compared["zones"] if one["change"]
+    ]
+    assert "SEASON-ORDER" in {one["code"] for one in answer["findings"]}
+    code, answer = compare(packs, "Long-Acre-2025", "Long-Acre-2025", out=tmp_path)
+    result = answer["result"]
+    assert (code, result["same"], result["moved_ha"]) == (0, True, 0)
+    assert not any(one["real"] for one in result["zones"])
+
+
+def test_same_bytes_and_nothing_replaced_unasked(packs, compared, tmp_path):
+    code, answer = compare(packs, "Long-Acre-2025", "Long-Acre-2026", out=tmp_path)
+    assert code == 0
+    first = {one["path"]: one["sha256"] for one in compared["written"]["files"]}
+    assert first == {one["path"]: one["sha256"] for one in answer["result"]["written"]["files"]}
+    code, answer = compare(packs, "Long-Acre-2025", "Long-Acre-2026", out=tmp_path)
+    assert code == 2
+    assert [one["code"] for one in answer["findings"]] == ["OUT-THERE"]
+
+
+def test_a_damaged_pack_is_refused_by_name(packs, tmp_path):
+    shutil.copytree(packs / "Long-Acre-2025", tmp_path / "hurt")
+    with (tmp_path / "hurt/prescription.geojson").open("a", encoding="utf-8") as stream:
+        stream.write(" ")
+    code, answer = run("compare", tmp_path / "hurt", packs / "Long-Acre-2026", "--out", tmp_path)
+    assert code == 3
+    assert {one["code"] for one in answer["findings"]} == {"SEASON-PACK"}
+    assert "prescription.geojson" in answer["findings"][0]["where"]
+    assert not list(tmp_path.glob("*to*"))
+
+
+def test_other_depth_other_ground_and_one_pack_alone(packs, tmp_path):
+    job = FIELDS / "long_acre/2026"
+    code, answer = run(
+        "prescribe", job, "--season", "2026-deep", "--depth-cm", "30", "--out", tmp_path
+    )
+    assert code == 0, answer["findings"]
+    code, answer = run(
+        "compare", packs / "Long-Acre-2025", tmp_path / "Long-Acre-2026-deep", "--out", tmp_path
+    )
+    result = answer["result"]
+    assert (code, result["shift"], result["zones"]) == (0, None, [])
+    assert "30 cm" in result["refused"]
+    assert result["moved_ha"] >= 0
+    code, answer = run("prescribe", FIELDS / "kiln_close/2026", "--out", tmp_path)
+    assert code == 0
+    code, answer = run(
+        "compare", packs / "Long-Acre-2025", tmp_path / "Kiln-Close-2026", "--out", tmp_path
+    )
+    assert (code, answer["findings"][0]["code"]) == (4, "SEASON-ELSEWHERE")
+    code, answer = run("compare", packs / "Long-Acre-2025", "--out", tmp_path)
+    assert code == 2
+
+
+def test_what_was_really_given_counts(packs, tmp_path):
+    """An as-applied file of polygons with rates takes the place of the prescription."""
+    outline = json.loads(OUTLINE.read_text("utf-8"))
+    for feature in outline["features"]:
+        feature["properties"] = {"boron_kg_ha": 0.5}
+    given = tmp_path / "given.geojson"
+    given.write_text(json.dumps(outline), encoding="utf-8")
+    code, answer = run(
+        "compare", packs / "Long-Acre-2025", packs / "Long-Acre-2026", "--out", tmp_path,
+        "--applied", f"2025={given}", "--applied-unit", "kg B/ha", "--yield-t-ha", "2025=60",
+    )  # fmt: skip
+    assert code == 0, answer["findings"]
+    for row in answer["result"]["balance"]:
+        assert row["applied"] == pytest.approx(0.5, abs=1e-4)
+        assert row["removed"] > 0
+    assert "SEASON-APPLIED" not in {one["code"] for one in answer["findings"]}
+    code, answer = run(
+        "compare", packs / "Long-Acre-2025", packs / "Long-Acre-2026", "--out", tmp_path,
+        "--applied", f"2019={given}",
+    )  # fmt: skip
+    assert code == 2
+
+
+def test_three_seasons_in_a_row(packs, tmp_path):
+    job = FIELDS / "long_acre/2026"
+    code, _ = run("prescribe", job, "--season", "2027", "--sampled-on", "2027-09-20",
+                  "--out", tmp_path)  # fmt: skip
+    assert code == 0
+    code, answer = run(
+        "compare", packs / "Long-Acre-2025", packs / "Long-Acre-2026",
+        tmp_path / "Long-Acre-2027", "--out", tmp_path,
+    )  # fmt: skip
+    assert code == 0
+    pairs = answer["result"]["pairs"]
+    assert [[one["season"] for one in pair["seasons"]] for pair in pairs] == [
+        ["2025", "2026"], ["2026", "2027"],
+    ]  # fmt: skip
+    assert not any(one["real"] for one in pairs[1]["zones"])
