@@ -272,13 +272,14 @@ def example_record() -> RunRecord:
         advice=("Zone 1 is sandy and low in organic matter: two passes lose less to leaching.",),
         sources=(
             {
+                "key": "crops: sugar beet",
                 "table": "crops",
                 "row": "sugar beet",
-                "figure": "broadcast cap",
                 "value": "2.24",
                 "unit": "kg B/ha",
-                "status": "PROPOSAL",
-                "source": "table 04b",
+                "status": "proposal",
+                "source": "table of crops",
+                "address": "",
             },
         ),
     )

@@ -43,8 +43,8 @@ def absolute_limit_kg_ha(crop: Crop, overrides: Iterable[Override] = ()) -> floa
 def rate_cap(crop: Crop, placement: Placement, overrides: Iterable[Override] = ()) -> Cap:
     """Most boron a crop may get with a placement, kg/ha, before the absolute limit.
 
-    A named person may raise a broadcast cap up to the absolute limit, and a band's from 0 to 0.28;
-    seed row stays 0, foliar keeps its limit a pass.
+    A named person may raise a broadcast cap up to the absolute limit, and a band's from 0 to 0.28
+    for a crop that is not sensitive; seed row stays 0, foliar keeps its limit a pass.
     """
     cap = _built_in(crop, placement)
     for one in overrides:
@@ -55,7 +55,7 @@ def rate_cap(crop: Crop, placement: Placement, overrides: Iterable[Override] = (
             return Cap(
                 kg_ha=min(one.value, most), row=cap.row, table=cap.table, overridden_by=one.person
             )
-        if one.what == BAND_CAP and placement is Placement.BAND and crop.tolerance != "sensitive":
+        if one.what == BAND_CAP and placement is Placement.BAND and crop.ceiling_class == "texture":
             most = min(one.value, limit("cap-band-override"))
             return Cap(
                 kg_ha=most, row="cap-band-override", table="limits", overridden_by=one.person

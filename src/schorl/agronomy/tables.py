@@ -1,23 +1,19 @@
 """Figures of agronomy with their sources: CSV files of this package, loaded and checked once.
 
-Every row has an id, a unit, a source and a status: READ (at its source), READ_SECONDARY (in a copy
-or in public code that quotes it), MEMORY (recalled, unverified), COMPUTED, PROPOSAL (of this
-program) or COMMON_PRACTICE_NO_SOURCE (a fact of the trade).
+What a row must have, and the words for how far it was checked, stand in
+:mod:`schorl.model.sourced`; what each table must hold in :mod:`schorl.agronomy.schemas`.
 """
 
 from __future__ import annotations
 
-import csv
-from collections.abc import Mapping
 from functools import lru_cache
 from importlib.resources import files
 from importlib.resources.abc import Traversable
-from types import MappingProxyType
 
-STATUSES = frozenset(
-    {"READ", "READ_SECONDARY", "MEMORY", "COMPUTED", "PROPOSAL", "COMMON_PRACTICE_NO_SOURCE"}
-)
-Row = Mapping[str, str]
+from schorl.agronomy.schemas import SCHEMAS
+from schorl.model.sourced import STATUSES, Row, read_rows, traced
+
+__all__ = ["STATUSES", "Row", "limit", "row_of", "table", "table_names", "trace"]
 
 
 def _folder() -> Traversable:
@@ -38,19 +34,10 @@ def table(name: str) -> tuple[Row, ...]:
     Raises
     ------
     ValueError
-        A row has no unit column, source or known status, or an id stands twice: a fault of the
-        package.
+        The table breaks its schema: a fault of the package.
     """
     text = (_folder() / f"{name}.csv").read_text(encoding="utf-8")
-    rows = tuple(MappingProxyType(dict(row)) for row in csv.DictReader(text.splitlines()))
-    seen: set[str] = set()
-    for row in rows:
-        if row["id"] in seen:
-            raise ValueError(f"table {name}: id `{row['id']}` stands twice")
-        if row["status"] not in STATUSES or not row["source"] or "unit" not in row:
-            raise ValueError(f"table {name}: row `{row['id']}` lacks unit, source or status")
-        seen.add(row["id"])
-    return rows
+    return read_rows(name, text, SCHEMAS.get(name))
 
 
 @lru_cache(maxsize=512)
@@ -69,12 +56,4 @@ def limit(row_id: str) -> float:
 
 def trace(name: str, row_id: str, value: float) -> dict[str, str]:
     """A figure as a report shows it: where it stands, its status and source."""
-    row = row_of(name, row_id)
-    return {
-        "table": name,
-        "row": row_id,
-        "value": f"{value:g}",
-        "unit": row["unit"],
-        "status": row["status"],
-        "source": row["source"],
-    }
+    return traced(name, row_of(name, row_id), f"{value:g}")

@@ -5,8 +5,10 @@ from __future__ import annotations
 import numpy as np
 
 from schorl.agronomy.crops import Crop
-from schorl.agronomy.tables import limit, row_of, table
-from schorl.model.arrays import Floats
+from schorl.agronomy.tables import Row, limit, row_of, table
+from schorl.model.arrays import Flags, Floats
+
+OWN_CLASSES = "program"
 
 
 def _line(name: str, group: str, column: str, clay_pct: Floats) -> Floats:
@@ -25,21 +27,35 @@ def texture_line_target(clay_pct: Floats) -> Floats:
     return _line("targets", "texture line", "target_mg_kg", clay_pct)
 
 
-def class_table_target(region: str, clay_pct: Floats) -> Floats:
-    """Lower end of "adequate": a region's figure, or this program's by texture class."""
-    if region:
-        row = next(row for row in table("class_limits") if row["region"] == region)
-        return np.full(np.shape(clay_pct), float(row["adequate_from"]))
-    sand, loam, clay = (
-        float(row_of("class_limits", f"program-{name}")["adequate_from"])
-        for name in ("sand", "loam", "clay")
-    )
-    return np.where(clay_pct < 10, sand, np.where(clay_pct <= 35, loam, clay))
+def class_rows(region: str) -> tuple[Row, ...]:
+    """Rows of a region's class limits; this program's own without a region."""
+    wanted = " ".join(region.lower().split()) or OWN_CLASSES
+    return tuple(row for row in table("class_limits") if row["region"] == wanted)
+
+
+def class_table_target(rows: tuple[Row, ...], clay_pct: Floats, organic: Flags) -> Floats:
+    """Lower end of "adequate" by clay; where a soil is organic that of its own row, if any."""
+    target = np.full(np.shape(clay_pct), np.nan)
+    for row in rows:
+        if row["organic"] == "yes":
+            chosen = organic
+        else:
+            low, high = float(row["clay_from_pct"]), float(row["clay_below_pct"])
+            chosen = (clay_pct >= low) & (clay_pct < high)
+        target[chosen] = float(row["adequate_from"])
+    return target
+
+
+def class_scope(rows: tuple[Row, ...], crop: Crop) -> bool:
+    """Whether a region's class limits were made for the crop."""
+    crops = rows[0]["crops"]
+    return crops == "all" or crop.name in crops.split("|")
 
 
 def regions() -> tuple[str, ...]:
-    """Regions with a preset of class limits."""
-    return tuple(row["region"] for row in table("class_limits") if row["region"] != "program")
+    """Regions with a preset of class limits, in the order of the table."""
+    names = dict.fromkeys(row["region"] for row in table("class_limits"))
+    return tuple(name for name in names if name != OWN_CLASSES)
 
 
 def own_target(

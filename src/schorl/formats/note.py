@@ -5,6 +5,7 @@ from __future__ import annotations
 from schorl.agronomy.cautions import cautions
 from schorl.model.record import RunRecord
 from schorl.model.settings import Placement
+from schorl.model.sourced import STATUSES
 
 
 def note_bytes(record: RunRecord) -> bytes:
@@ -26,6 +27,7 @@ def note_bytes(record: RunRecord) -> bytes:
     lines += [
         f"zone {rate.zone}: {rate.product_rate:.2f} {unit} ({rate.boron_kg_ha:.2f} kg B/ha) on "
         f"{rate.area_ha:.2f} ha; ruled by {rate.ruled_by}"
+        f"{f' [{rate.rests_on}]' if rate.rests_on else ''}"
         for rate in prescription.rates
     ]
     lines += [
@@ -36,5 +38,10 @@ def note_bytes(record: RunRecord) -> bytes:
         *(f"Set by a named person: {one.what} {one.value:g} {one.unit}, {one.person}"
           for one in settings.overrides),
         *cautions(foliar=settings.placement is Placement.FOLIAR),
+        "",
+        "In brackets: the rows of the tables of figures behind each rate (`schorl tables NAME`),",
+        "and how far each was checked:",
+        *(f"  {name}: {STATUSES[name]}" for name in STATUSES
+          if any(f"({name})" in rate.rests_on for rate in prescription.rates)),
     ]  # fmt: skip
     return ("\n".join(lines) + "\n").encode("utf-8")

@@ -5,17 +5,48 @@ Columns and status words are those of the tables of agronomy, so that both can b
 
 from __future__ import annotations
 
-import csv
 from collections.abc import Mapping
 from functools import lru_cache
 from importlib.resources import files
 from importlib.resources.abc import Traversable
 from types import MappingProxyType
 
-STATUSES = frozenset(
-    {"READ", "READ_SECONDARY", "MEMORY", "COMPUTED", "PROPOSAL", "COMMON_PRACTICE_NO_SOURCE"}
+from schorl.model.sourced import Column, Row, Schema, number, read_rows, traced, words
+
+__all__ = ["SCHEMAS", "Row", "machine_limit", "table", "table_names", "trace"]
+
+_COMPOUND = words(
+    "boric acid",
+    "disodium tetraborate decahydrate (borax)",
+    "disodium tetraborate pentahydrate",
+    "disodium octaborate tetrahydrate",
 )
-Row = Mapping[str, str]
+#: What each table must hold besides id, unit, source, status and address.
+SCHEMAS: Mapping[str, Schema] = MappingProxyType(
+    {
+        "machine_limits": Schema(columns={"value": number(0, 10_000)}),
+        "nozzles": Schema(
+            columns={"value": number(0.1, 40), "colour": Column(needed=False)},
+            units=frozenset({"L/min at 3 bar"}),
+        ),
+        "solids": Schema(
+            columns={
+                "aliases": Column(needed=False),
+                "boron_pct": number(5, 35),
+                "value": number(0.5, 4),
+            },
+            units=frozenset({"g/cm3 of the crystal", "g/cm3 of the solid"}),
+        ),
+        "solubility": Schema(
+            columns={
+                "compound": _COMPOUND,
+                "temperature_c": number(-1, 100),
+                "value": number(0.1, 600),
+            },
+            units=frozenset({"% w/w of the saturated solution", "g/L"}),
+        ),
+    }
+)
 
 
 def _folder() -> Traversable:
@@ -36,17 +67,10 @@ def table(name: str) -> Mapping[str, Row]:
     Raises
     ------
     ValueError
-        A row lacks unit, source or a known status, or an id stands twice: a fault of the package.
+        The table breaks its schema: a fault of the package.
     """
     text = (_folder() / f"{name}.csv").read_text(encoding="utf-8")
-    rows: dict[str, Row] = {}
-    for row in csv.DictReader(text.splitlines()):
-        if row["id"] in rows:
-            raise ValueError(f"table {name}: id `{row['id']}` stands twice")
-        if row["status"] not in STATUSES or not row["source"] or not row["unit"]:
-            raise ValueError(f"table {name}: row `{row['id']}` lacks unit, source or status")
-        rows[row["id"]] = MappingProxyType(dict(row))
-    return MappingProxyType(rows)
+    return MappingProxyType({row["id"]: row for row in read_rows(name, text, SCHEMAS.get(name))})
 
 
 def machine_limit(row_id: str) -> float:
@@ -57,11 +81,4 @@ def machine_limit(row_id: str) -> float:
 def trace(name: str, row_id: str) -> dict[str, str]:
     """A figure as a report shows it: where it stands, its status and source."""
     row = table(name)[row_id]
-    return {
-        "table": name,
-        "row": row_id,
-        "value": row["value"],
-        "unit": row["unit"],
-        "status": row["status"],
-        "source": row["source"],
-    }
+    return traced(name, row, row["value"])

@@ -106,6 +106,7 @@ class ZoneRate:
     doubled_pass_mg_kg: float
     samples: int
     why: str
+    rests_on: str = ""  # rows of the tables behind what ruled, with how far each was checked
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -159,7 +160,7 @@ class Prescription:
     machine: MachinePlan
     saving: tuple[float, float, float] | None = None  # low, middle, high share of loss saved
     advice: tuple[str, ...] = ()  # splitting, carriers, pH, lime: plain sentences
-    sources: tuple[Mapping[str, str], ...] = ()  # figures used: table, row, value, status, source
+    sources: tuple[Mapping[str, str], ...] = ()  # figures used, as model.sourced.traced
 
     def __post_init__(self) -> None:
         object.__setattr__(

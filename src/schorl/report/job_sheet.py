@@ -114,7 +114,10 @@ def sheet_facts(record: RunRecord, names: Sequence[str]) -> dict[str, Any]:
         "checks": list(CHECKS),
         "care": _care(record),
         "cautions": list(cautions(foliar=settings.placement is Placement.FOLIAR)),
-        "notes": [shortened(one, 200) for one in record.prescription.machine.advice[:5]],
+        "notes": [
+            *(shortened(one, 200) for one in record.prescription.machine.advice[:5]),
+            *_rests_on(record),
+        ],
         "overrides": [
             f"{one.what} set to {one.value:g} {one.unit} by {one.person}"
             for one in settings.overrides
@@ -157,6 +160,16 @@ def _rate_row(colour: str, rates: list[float], zones: list[ZoneRate], shown: Sho
         shown.amount(amount) if amount else "shut off",
         figure(low, 2) if low == high else f"{figure(low, 2)} to {figure(high, 2)}",
     ]
+
+
+def _rests_on(record: RunRecord) -> list[str]:
+    """One line: the rows of the tables behind the rates, with how far each was checked."""
+    rows = dict.fromkeys(
+        one for rate in record.prescription.rates for one in rate.rests_on.split("; ") if one
+    )
+    if not rows:
+        return []
+    return [shortened(f"The rates rest on {'; '.join(rows)}. The report has the sources.", 400)]
 
 
 def _care(record: RunRecord) -> list[str]:

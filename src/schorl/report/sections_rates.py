@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from schorl.model.prescription import Limit, Outlook
+from schorl.model.prescription import Limit, Outlook, ZoneRate
 from schorl.model.record import RunRecord
 from schorl.report import charts, zones_svg
 from schorl.report.markup import Safe, join, scrolled, table, tag
@@ -85,7 +85,8 @@ def ruled_section(record: RunRecord, shown: Shown) -> Safe:
             for name in names
         ]
         given = shown.boron_rate_figure(rate.boron_kg_ha)
-        rows.append([str(rate.zone), asked, *cells, given, tag("span", RULED[rate.ruled_by])])
+        held = join([RULED[rate.ruled_by], *rests_words(rate)])
+        rows.append([str(rate.zone), asked, *cells, given, tag("span", held)])
     note = (
         f"Boron in {shown.boron_rate_unit}. The lowest figure of a row wins; it is marked ◂. The "
         "machine then rounds down to what it can hold."
@@ -104,6 +105,11 @@ def ruled_section(record: RunRecord, shown: Shown) -> Safe:
         "ruled", "What ruled the rates", table(head, rows, caption="Limits of each zone"),
         tag("p", note, class_="soft"), tag("p", twice) if twice else "",
     )  # fmt: skip
+
+
+def rests_words(rate: ZoneRate) -> tuple[Safe, ...]:
+    """The rows of the tables behind what ruled, so that a reader can look them up."""
+    return (tag("br"), tag("small", rate.rests_on, class_="soft")) if rate.rests_on else ()
 
 
 def _limit(said: str, ruled: bool) -> object:

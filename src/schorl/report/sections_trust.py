@@ -9,6 +9,7 @@ from typing import Any
 from schorl.findings import Severity
 from schorl.model.record import RunRecord
 from schorl.model.samples import PROPERTY_UNITS
+from schorl.model.sourced import STATUSES
 from schorl.model.surface import Surface
 from schorl.report import charts
 from schorl.report.markup import Safe, join, table, tag
@@ -198,32 +199,30 @@ def finding_section(record: RunRecord) -> Safe:
     return section("findings", "Findings", table(head, rows, caption="Findings"))
 
 
-STATUS = {
-    "READ": "read at the source",
-    "READ_SECONDARY": "read in a work that cites the source",
-    "PROPOSAL": "proposed by this program",
-    "MEMORY": "from memory",
-    "COMMON_PRACTICE_NO_SOURCE": "common practice, no source",
-}
-
-
 def source_section(record: RunRecord) -> Safe:
     """Every figure that was used, where it comes from and how far it was checked."""
     rows = []
     for row in record.prescription.sources:
-        name = ", ".join(word for word in (row.get("row", ""), row.get("figure", "")) if word)
-        value = f"{row.get('value', '')} {row.get('unit', '')}".strip()
-        status = row.get("status", "")
+        value = f"{row['value']} {row['unit']}".strip()
         rows.append(
             [
-                name or row.get("table", ""),
+                tag("span", row.get("key") or f"{row['table']}: {row['row']}"),
                 tag("span", value),
-                tag("span", STATUS.get(status, status.lower().replace("_", " "))),
-                tag("span", row.get("source", "")),
-                tag("span", row.get("table", ""), class_="soft"),
+                tag("span", row["status"]),
+                tag("span", row["source"], *_address(row.get("address", ""))),
             ]
         )
     if not rows:
         return section("sources", "Sources", tag("p", "No built-in figure was used."))
-    head = ["Figure", "Value", "Standing", "Source", "Table"]
-    return section("sources", "Sources of the figures", table(head, rows, caption="Sources"))
+    head = ["Table: row", "Value", "Standing", "Source"]
+    met = dict.fromkeys(row["status"] for row in record.prescription.sources)
+    words = [f"{name}: {STATUSES[name]}" for name in STATUSES if name in met]
+    note = f"Standing of a figure. {'; '.join(words)}. `schorl tables` prints every row."
+    return section(
+        "sources", "Sources of the figures", table(head, rows, caption="Sources"),
+        tag("p", note, class_="soft"),
+    )  # fmt: skip
+
+
+def _address(address: str) -> tuple[object, ...]:
+    return (" ", tag("span", address, class_="soft address")) if address else ()

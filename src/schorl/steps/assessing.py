@@ -12,13 +12,14 @@ import shapely
 from schorl.agronomy.caps import absolute_limit_kg_ha, rate_cap
 from schorl.agronomy.chances import chance_over_ceiling
 from schorl.agronomy.crops import Crop, crop_named
+from schorl.agronomy.methods import method_row
 from schorl.agronomy.soil_mass import (
     bulk_density_g_cm3,
     ceiling_depth_cm,
     kg_ha_per_mg_kg,
     need_depth_cm,
 )
-from schorl.agronomy.tables import limit, row_of, table, trace
+from schorl.agronomy.tables import limit, row_of, trace
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.model.arrays import Flags, Floats
@@ -26,8 +27,16 @@ from schorl.model.field import CellGrid
 from schorl.model.prescription import CellNeed
 from schorl.model.samples import SampleSet
 from schorl.model.settings import AppliedBoron, RunSettings
+from schorl.model.sourced import UNSURE
 from schorl.model.surface import Surface
-from schorl.steps.limits_of_soil import ceiling_for, hot_water, target_for
+from schorl.steps.limits_of_soil import (
+    ceiling_for,
+    class_limits_fit,
+    class_limits_note,
+    hot_water,
+    target_for,
+    uses_class_table,
+)
 
 G_PER_HA_FROM_MM = 10.0  # 1 mg/L x 1 mm = 10 g/ha, arithmetic
 
@@ -69,7 +78,7 @@ def assess_cells(
     found: list[Finding] = []
     _refuse_unknown(samples, surfaces, settings, found)
     soil = _soil(samples, surfaces, settings, found)
-    target, sources = target_for(crop, settings, soil.clay_pct)
+    target, sources = target_for(crop, settings, soil.clay_pct, soil.organic_matter_pct)
     ceiling, more = ceiling_for(
         crop, settings, soil.clay_pct, soil.organic_matter_pct, builtin=hot_water(samples)
     )
@@ -81,17 +90,18 @@ def assess_cells(
         samples, surfaces, grid, settings, crop=crop, soil=soil, target=target, ceiling=ceiling
     )
     at_samples = _need_at_samples(samples, grid, need)
-    found.extend(_status_notes([*sources, *more]))
+    cap = rate_cap(crop, settings.placement, settings.overrides)
+    capped = trace(cap.table, cap.row, cap.kg_ha)
+    found.extend(_status_notes([*sources, *more, capped]))
     if crop.perennial:
         what = f"{crop.name}: only the yearly cap is given here"
         found.append(finding("RATE-PERENNIAL", where="crop", what=what))
-    cap = rate_cap(crop, settings.placement, settings.overrides)
     return Assessed(
         need=need,
         sample_need_kg_ha=at_samples,
         crop=crop,
         findings=tuple(found),
-        sources=(*sources, *more, trace(cap.table, cap.row, cap.kg_ha)),
+        sources=(*sources, *more, capped),
     )
 
 
@@ -102,23 +112,25 @@ def _refuse_unknown(
     found: list[Finding],
 ) -> None:
     """Everything that makes an honest rate impossible, said together."""
-    campaign, crop = samples.campaign, settings.crop
+    crop, campaign = settings.crop, samples.campaign
     own = crop.target_mg_kg is not None or bool(crop.own_targets)
     own_limits = own and crop.ceiling_mg_kg is not None
-    bad: list[Finding] = []
-    if not hot_water(samples) and not own_limits:
+    bad = class_limits_fit(samples, settings) if uses_class_table(settings) else []
+    fits = own or (uses_class_table(settings) and not bad)
+    found.extend(class_limits_note(settings) if uses_class_table(settings) and not bad else [])
+    lacking = [name for name, has in (("target", fits), ("ceiling", crop.ceiling_mg_kg)) if not has]
+    if not hot_water(samples) and lacking:
         bad.append(
             finding(
                 "RATE-METHOD",
                 where="boron",
-                what=f"boron was extracted with {campaign.method}, the limits are for hot water; "
-                + _published(campaign.method),
+                what=f"boron was extracted with {campaign.method}, the limits are for hot water, "
+                f"so {' and '.join(lacking)} are missing; {_published(campaign.method)}",
             )
         )
-    if campaign.per_volume and not own_limits:
-        bad.append(
-            finding("RATE-VOLUME", where="boron", what="boron is reported per litre of soil")
-        )
+    if campaign.per_volume and lacking:
+        what = f"boron is reported per litre of soil: {' and '.join(lacking)} per litre are missing"
+        bad.append(finding("RATE-VOLUME", where="boron", what=what))
     if "clay" not in surfaces and not own_limits and not crop.texture:
         bad.append(finding("RATE-CLAY", where="clay", what="clay is neither measured nor declared"))
     if (
@@ -136,10 +148,8 @@ def _refuse_unknown(
 
 
 def _published(method: str) -> str:
-    for row in table("methods"):
-        if method.lower() in (row["id"], *row["aliases"].split("|")):
-            return row["note"]
-    return "nothing is known of limits for this method"
+    row = method_row(method)
+    return "nothing is known of limits for this method" if row is None else row["note"]
 
 
 def _volume(samples: SampleSet) -> bool:
@@ -262,7 +272,8 @@ def _with_target_spread(
     clay = surfaces.get("clay")
     if clay is None or clay.constant:
         return boron.decision_sd
-    above, _ = target_for(crop, settings, soil.clay_pct + clay.decision_sd)
+    more_clay = np.minimum(soil.clay_pct + clay.decision_sd, 100.0)
+    above, _ = target_for(crop, settings, more_clay, soil.organic_matter_pct)
     of_target = np.abs(above - target)
     if boron.transform == "log":
         of_target = of_target / np.maximum(boron.estimate, 1e-6)
@@ -359,13 +370,18 @@ def _need_at_samples(samples: SampleSet, grid: CellGrid, need: CellNeed) -> Floa
 
 
 def _status_notes(sources: list[Mapping[str, str]]) -> list[Finding]:
-    """One note a table and status: figures that rule here and were not read at their source."""
-    groups: dict[tuple[str, str], list[str]] = {}
+    """One note a status: figures that rule here and were not read at their source."""
+    groups: dict[str, dict[str, list[str]]] = {}
     for row in sources:
-        if row["status"] in ("MEMORY", "PROPOSAL", "COMMON_PRACTICE_NO_SOURCE"):
-            key = (row["table"], row["status"].replace("_", " ").lower())
-            groups.setdefault(key, []).append(f"{row['row']} {row['value']}")
+        if row["status"] in UNSURE:
+            tables = groups.setdefault(row["status"], {})
+            tables.setdefault(row["table"], []).append(f"{row['row']} {row['value']}")
     return [
-        finding("RATE-STATUS", where=f"table {name}", what=f"{status}: {', '.join(rows)}")
-        for (name, status), rows in groups.items()
+        finding(
+            "RATE-STATUS",
+            where="tables",
+            what=f"{status}: "
+            + "; ".join(f"{name}: {', '.join(rows)}" for name, rows in of.items()),
+        )
+        for status, of in groups.items()
     ]

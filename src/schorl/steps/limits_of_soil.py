@@ -7,8 +7,11 @@ from collections.abc import Mapping
 import numpy as np
 
 from schorl.agronomy.crops import Crop, crop_named
-from schorl.agronomy.tables import table, trace
+from schorl.agronomy.methods import NOT_NAMED, is_hot_water, same_method
+from schorl.agronomy.tables import Row, limit, table, trace
 from schorl.agronomy.targets import (
+    class_rows,
+    class_scope,
     class_table_target,
     crop_need_target,
     own_target,
@@ -17,7 +20,7 @@ from schorl.agronomy.targets import (
     texture_line_target,
 )
 from schorl.errors import Refusal, UsageProblem
-from schorl.findings import finding
+from schorl.findings import Finding, finding
 from schorl.model.arrays import Floats
 from schorl.model.samples import SampleSet
 from schorl.model.settings import CropSettings, Interpretation, RunSettings
@@ -27,15 +30,66 @@ Sources = list[Mapping[str, str]]
 
 def hot_water(samples: SampleSet) -> bool:
     """Whether the built-in limits belong to the extraction method."""
-    method = samples.campaign.method.lower().strip()
-    for row in table("methods"):
-        if method in (row["id"], *row["aliases"].split("|")):
-            return row["limits_apply"] == "yes"
-    return False
+    return is_hot_water(samples.campaign.method)
 
 
-def target_for(crop: Crop, settings: RunSettings, clay_pct: Floats) -> tuple[Floats, Sources]:
-    """Target of each cell, ``(n_cells,)``, mg/kg.
+def class_limits_fit(samples: SampleSet, settings: RunSettings) -> list[Finding]:
+    """What keeps a region's class limits from this crop and these samples, all at once.
+
+    Raises
+    ------
+    UsageProblem
+        A region without class limits.
+    """
+    rows = _class_rows(settings.crop)
+    first, campaign = rows[0], samples.campaign
+    name, found = first["region"], []
+    if not class_scope(rows, crop_named(settings.crop.crop)):
+        what = f"class limits of {name} were made for {first['scope']}, not {settings.crop.crop}"
+        found.append(finding("RATE-REGION-CROP", where="target", what=what))
+    unnamed = first["method"] == NOT_NAMED
+    if not (unnamed and hot_water(samples)) and not same_method(first["method"], campaign.method):
+        what = (
+            f"class limits of {name} are for {first['method']}, the samples for {campaign.method}"
+        )
+        if unnamed:
+            what = f"class limits of {name} do not name their extraction, the samples are for "
+            what += campaign.method
+        found.append(finding("RATE-REGION-METHOD", where="target", what=what))
+    if campaign.per_volume != (first["unit"] == "mg/L"):
+        basis = "litre" if campaign.per_volume else "kilogram"
+        what = f"class limits of {name} are in {first['unit']}, the samples are per {basis} of soil"
+        found.append(finding("RATE-REGION-VOLUME", where="target", what=what))
+    return found
+
+
+def class_limits_note(settings: RunSettings) -> list[Finding]:
+    """What to know of a region's class limits that may be used."""
+    first = _class_rows(settings.crop)[0]
+    if first["method"] != NOT_NAMED:
+        return []
+    what = f"class limits of {first['region']}: {first['note'] or 'extraction not named'}"
+    return [finding("RATE-REGION-UNNAMED", where="target", what=what)]
+
+
+def _class_rows(chosen: CropSettings) -> tuple[Row, ...]:
+    rows = class_rows(chosen.region)
+    if not rows:
+        what = f"`{chosen.region}` has no class limits; there are {', '.join(regions())}"
+        raise UsageProblem([finding("RATE-REGION", where="job", what=what)])
+    return rows
+
+
+def uses_class_table(settings: RunSettings) -> bool:
+    """Whether the target comes from class limits."""
+    chosen = settings.crop
+    return chosen.interpretation is Interpretation.CLASS_TABLE and chosen.target_mg_kg is None
+
+
+def target_for(
+    crop: Crop, settings: RunSettings, clay_pct: Floats, organic_matter_pct: Floats
+) -> tuple[Floats, Sources]:
+    """Target of each cell, ``(n_cells,)``, mg/kg (mg/L of soil with limits per volume).
 
     Raises
     ------
@@ -51,12 +105,13 @@ def target_for(crop: Crop, settings: RunSettings, clay_pct: Floats) -> tuple[Flo
     if kind is Interpretation.TEXTURE_LINE:
         return texture_line_target(clay_pct), _rows("targets", "group", "texture line")
     if kind is Interpretation.CLASS_TABLE:
-        region = chosen.region.lower()
-        if region and region not in regions():
-            what = f"`{chosen.region}` has no class limits; there are {', '.join(regions())}"
-            raise UsageProblem([finding("RATE-REGION", where="job", what=what)])
-        rows = _rows("class_limits", "region", region or "program")
-        return class_table_target(region, clay_pct), rows
+        rows = _class_rows(chosen)
+        organic = organic_matter_pct > limit("organic-from")
+        target = class_table_target(rows, clay_pct, organic)
+        used = [row for row in rows if (target == float(row["adequate_from"])).any()]
+        return target, [
+            trace("class_limits", row["id"], float(row["adequate_from"])) for row in used
+        ]
     return crop_need_target(crop.need, clay_pct), _rows("targets", "group", crop.need)
 
 
@@ -74,19 +129,22 @@ def _own(crop: Crop, chosen: CropSettings, clay_pct: Floats) -> tuple[Floats, So
 def _said(what: str, chosen: CropSettings) -> Mapping[str, str]:
     value = chosen.target_mg_kg if what == "target" else chosen.ceiling_mg_kg
     return {
+        "key": f"job: {what}",
         "table": "job",
         "row": what,
         "value": f"{value:g}",
         "unit": "mg/kg",
-        "status": "GIVEN",
+        "status": "given",
         "source": "given in the job",
+        "address": "",
     }
 
 
 def _rows(name: str, column: str, wanted: str) -> Sources:
-    value = {"targets": "target_mg_kg", "class_limits": "adequate_from"}[name]
     return [
-        trace(name, row["id"], float(row[value])) for row in table(name) if row[column] == wanted
+        trace(name, row["id"], float(row["target_mg_kg"]))
+        for row in table(name)
+        if row[column] == wanted
     ]
 
 

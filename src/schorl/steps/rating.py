@@ -25,6 +25,7 @@ from schorl.model.surface import Surface
 from schorl.model.zones import Zone, ZoneKind, ZoneMap
 from schorl.steps.advice import advice_for
 from schorl.steps.assessing import Assessed, assess_cells
+from schorl.steps.figures_used import limits_used, rests_on
 from schorl.steps.zone_rates import (
     Ruled,
     cell_rates_kg_ha,
@@ -101,8 +102,13 @@ def rated_zones(
     other plans than this one choose theirs afresh.
     """
     zone_map, need, settings = rows.zone_map, rows.need, rows.settings
+    used = _once((*sources, *limits_used(rows.samples, settings), *machine.sources))
     rates = tuple(
-        rows.zone_rate(place, one, machine.product_rates[place]) for place, one in enumerate(ruled)
+        replace(
+            rows.zone_rate(place, one, machine.product_rates[place]),
+            rests_on=rests_on(one.by, used),
+        )
+        for place, one in enumerate(ruled)
     )
     value = _value(zone_map, rates, need, job)
     prescription = Prescription(
@@ -118,10 +124,15 @@ def rated_zones(
         machine=machine.plan,
         saving=_saving(value, len(rows.samples)),
         advice=advice_for(rows.samples, rows.surfaces, rates, settings),
-        sources=(*sources, *machine.sources),
+        sources=used,
     )
     found = (*machine.findings, *_findings(prescription, need, settings))
     return Rated(prescription=prescription, findings=found, machine=machine.machine)
+
+
+def _once(sources: Sequence[Mapping[str, str]]) -> tuple[Mapping[str, str], ...]:
+    """Every figure once, where it stands first: adapting brings the old ones along."""
+    return tuple({(row["table"], row["row"], row["value"]): row for row in sources}.values())
 
 
 def _area(zone_map: ZoneMap) -> float:
