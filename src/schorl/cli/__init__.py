@@ -14,6 +14,7 @@ COMMANDS = {
     "check": "List everything the checks notice, without making rates.",
     "prescribe": "Make the prescription: surfaces, zones, rates, files, report.",
     "verify": "Say whether a pack or file is whole, valid and what its record says.",
+    "adapt": "Bring a pack to another product, machine or controller, never with more boron.",
     "compare": "Say what changed between seasons, whether it is real, and what to do.",
     "tables": "Show the figures Schorl works with, each with its source.",
     "explain": "Explain a finding code in full.",

@@ -88,6 +88,7 @@ def write_pack(
 def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -> None:
     from schorl.formats.note import note_bytes
     from schorl.formats.rasters import write_surfaces
+    from schorl.formats.record_file import RECORD_FILE, record_bytes
     from schorl.formats.shapes import TASK_DECIMALS, zone_shapes
     from schorl.formats.taskdata import taskdata_bytes
     from schorl.formats.vectors import geojson_bytes, write_geopackage, write_shapefile
@@ -106,6 +107,7 @@ def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -
     write_surfaces(folder / "surfaces", record)
     for name, data in extras.items():
         (folder / name).write_bytes(data)
+    (folder / RECORD_FILE).write_bytes(record_bytes(record))
     write_json(folder / "summary.json", summary(record))
 
 

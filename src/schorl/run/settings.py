@@ -24,6 +24,8 @@ from schorl.model.settings import (
 )
 from schorl.units import UnitSystem
 
+#: What was given, what is assumed without it, and the option to say otherwise.
+Default = tuple[object, str | None, str]
 DEFAULT_WIDTH_M = 24.0
 DEFAULT_SPEED_KM_H = 10.0
 DEFAULT_RATE_CHANGE_S = 3.0
@@ -74,25 +76,24 @@ def _missing(job: Job) -> Iterator[Finding]:
 
 def default_notes(job: Job) -> tuple[Finding, ...]:
     """One note for each default that was used and can change a rate."""
-    return tuple(_defaults(job))
+    return (*machine_notes(job), *_defaults(job))
 
 
-def _defaults(job: Job) -> Iterator[Finding]:
+def machine_notes(job: Job) -> tuple[Finding, ...]:
+    """One note for each default of the machine that was used."""
     machine = job.machine
-    used = [
+    used: list[Default] = [
         (machine.working_width_m, f"working width {DEFAULT_WIDTH_M:g} m", "--working-width-m"),
         (machine.speed_km_h, f"speed {DEFAULT_SPEED_KM_H:g} km/h", "--speed-km-h"),
         (machine.rate_change_s, f"rate change in {DEFAULT_RATE_CHANGE_S:g} s", "rate_change_s"),
         (machine.spread_cv_pct, f"spread CV {DEFAULT_SPREAD_CV_PCT:g} %", "--spread-cv"),
         (machine.least_rate, "no least rate of the machine", "--least-rate"),
         (machine.most_rate, "no most rate of the machine", "--most-rate"),
-        (
-            job.product.placement,
-            "granule broadcast on the surface" if job.product.form == "granule" else None,
-            "--placement",
-        ),
-        (job.crop.interpretation, _default_interpretation(job), "--interpretation"),
     ]
+    return tuple(_said(used))
+
+
+def _said(used: list[Default]) -> Iterator[Finding]:
     for given, said, option in used:
         if given is None and said:
             yield finding(
@@ -101,6 +102,15 @@ def _defaults(job: Job) -> Iterator[Finding]:
                 what=f"{said} was assumed",
                 hint=f"say otherwise with `{option}`",
             )
+
+
+def _defaults(job: Job) -> Iterator[Finding]:
+    granule = "granule broadcast on the surface" if job.product.form == "granule" else None
+    used: list[Default] = [
+        (job.product.placement, granule, "--placement"),
+        (job.crop.interpretation, _default_interpretation(job), "--interpretation"),
+    ]
+    yield from _said(used)
     if not job.crop.next:
         yield finding(
             "JOB-NEXT-CROP", where="job", what="the next crop is not named: it counts as sensitive"
@@ -127,9 +137,9 @@ def resolve(job: Job, *, field_name: str, layers: Layers) -> RunSettings:
         field_name=field_name,
         season=job.season,
         crop=_crop(job, layers),
-        product=_product(job),
+        product=product_of(job),
         placement=Placement(job.product.placement or "broadcast"),
-        machine=_machine(job),
+        machine=machine_of(job),
         zoning=_zoning(job, layers),
         cell_m=job.cell_m,
         units=UnitSystem(job.units),
@@ -161,12 +171,14 @@ def _crop(job: Job, layers: Layers) -> CropSettings:
     )
 
 
-def _product(job: Job) -> Product:
+def product_of(job: Job) -> Product:
+    """A job's product."""
     plain = job.product.model_dump(exclude={"form", "placement"})
     return Product(form=Form(job.product.form or "granule"), **plain)
 
 
-def _machine(job: Job) -> Machine:
+def machine_of(job: Job) -> Machine:
+    """A job's machine, with the documented defaults for what it leaves out."""
     given = job.machine.model_dump(exclude_none=True)
     defaults = {
         "working_width_m": DEFAULT_WIDTH_M,
