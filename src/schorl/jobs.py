@@ -204,6 +204,7 @@ class Job(_Section):
     made_on: date | None = None
     prepared_by: str = ""
     cell_m: float | None = Field(default=None, ge=0.5, le=50)
+    profile: str = ""
     boundary: BoundaryPart | None = None
     samples: SamplesPart | None = None
     crop: CropPart = Field(default_factory=CropPart)

@@ -20,6 +20,19 @@ PLACEMENTS = click.Choice(
 )
 INTERPRETATIONS = click.Choice(["crop need", "texture line", "class table", "own"])
 
+
+class NameOrFile(click.ParamType):  # type: ignore[type-arg]
+    """The name of a profile, or a TOML file, whose path counts from here."""
+
+    name = "NAME|FILE"
+
+    def convert(
+        self, value: Any, param: click.Parameter | None, ctx: click.Context | None
+    ) -> str | Path:
+        """A path where it ends like one."""
+        return Path(value) if str(value).lower().endswith(".toml") else str(value)
+
+
 #: flag, place in the job, type, help
 FACTS: tuple[tuple[str, str, Any, str], ...] = (
     ("--boundary", "boundary.file", FILE, "Field boundary: GeoJSON, shapefile, GeoPackage, KML."),
@@ -83,6 +96,7 @@ FACTS: tuple[tuple[str, str, Any, str], ...] = (
     ("--zones", "zoning.count", int, "Number of zones [the checks decide]."),
     ("--heading-deg", "zoning.heading_deg", float, "Direction of travel, degrees from north."),
     ("--keep-zones-of", "zoning.keep_zones_of", FILE, "Earlier pack whose zones are kept."),
+    ("--profile", "profile", NameOrFile(), "What the controller takes: a name, or a TOML file."),
     ("--cell-m", "cell_m", float, "Cell size [a quarter of the working width]."),
     ("--units", "units", click.Choice(["metric", "us"]), "Units on report and sheet [metric]."),
     ("--seed", "seed", int, "Seed of everything random [0]."),

@@ -51,10 +51,18 @@ class PackContents:
 
 def prescription_files(record: RunRecord) -> tuple[str, ...]:
     """Files for the controller, in the order a contractor looks for them."""
-    return (
-        "prescription.geojson", "shapefile/BORON01.shp", "shapefile/BORON01.zip",
-        "TASKDATA/TASKDATA.XML", "prescription.gpkg", "surfaces/rate.tif",
-    )  # fmt: skip
+    from schorl.formats.shapes import profile_of
+    from schorl.formats.taskdata import XML_NAME, task_place
+
+    profile = profile_of(record)
+    files = {
+        "geojson": ("prescription.geojson",),
+        "shapefile": ("shapefile/BORON01.shp", "shapefile/BORON01.zip"),
+        "task data": (f"{task_place(profile)}/{XML_NAME}", f"{task_place(profile)}.zip"),
+        "geopackage": ("prescription.gpkg",),
+        "geotiff": ("surfaces/rate.tif",),
+    }
+    return tuple(name for kind, names in files.items() if kind in profile.formats for name in names)
 
 
 def write_pack(
@@ -89,21 +97,36 @@ def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -
     from schorl.formats.note import note_bytes
     from schorl.formats.rasters import write_surfaces
     from schorl.formats.record_file import RECORD_FILE, record_bytes
-    from schorl.formats.shapes import TASK_DECIMALS, zone_shapes
-    from schorl.formats.taskdata import taskdata_bytes
-    from schorl.formats.vectors import geojson_bytes, write_geopackage, write_shapefile
+    from schorl.formats.shapes import TASK_DECIMALS, profile_of, zone_shapes
+    from schorl.formats.taskdata import task_files, task_place
+    from schorl.formats.vectors import (
+        geojson_bytes,
+        write_geopackage,
+        write_shapefile,
+        zip_bytes,
+    )
 
-    shapes = zone_shapes(record)
-    for name in ("shapefile", "TASKDATA", "surfaces"):
-        (folder / name).mkdir()
-    (folder / "prescription.geojson").write_bytes(geojson_bytes(record, shapes))
-    write_shapefile(folder / "shapefile", shapes)
+    profile, shapes = profile_of(record), zone_shapes(record)
     note = note_bytes(record)
-    (folder / "shapefile" / "READ_ME.txt").write_bytes(note)
     (folder / "READ_ME.txt").write_bytes(note)
+    if "geojson" in profile.formats:
+        (folder / "prescription.geojson").write_bytes(geojson_bytes(record, shapes))
+    if "shapefile" in profile.formats:
+        (folder / "shapefile").mkdir()
+        write_shapefile(folder / "shapefile", record, shapes)
+        (folder / "shapefile" / "READ_ME.txt").write_bytes(note)
+    if "task data" in profile.formats:
+        task_shapes = zone_shapes(record, decimals=TASK_DECIMALS)
+        place = folder / task_place(profile)
+        place.mkdir(parents=True)
+        files = task_files(record, task_shapes, profile)
+        for name, data in files.items():
+            (place / name).write_bytes(data)
+        zipped = {f"{place.name}/{name}": data for name, data in files.items()}
+        place.with_suffix(".zip").write_bytes(zip_bytes(zipped))
+    # Both stay whatever the controller takes: later seasons and checks read them.
     write_geopackage(folder / "prescription.gpkg", record, shapes)
-    task_shapes = zone_shapes(record, decimals=TASK_DECIMALS)
-    (folder / "TASKDATA" / "TASKDATA.XML").write_bytes(taskdata_bytes(record, task_shapes))
+    (folder / "surfaces").mkdir()
     write_surfaces(folder / "surfaces", record)
     for name, data in extras.items():
         (folder / name).write_bytes(data)

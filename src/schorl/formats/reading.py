@@ -11,6 +11,8 @@ from xml.etree import ElementTree
 import shapely
 from shapely.geometry import Polygon
 
+from schorl.formats.reading_grid import TaskCells, read_cells
+from schorl.formats.task_rules import task_faults
 from schorl.formats.taskdata import MASS_COUNTS, MASS_DDI, VOLUME_COUNTS, VOLUME_DDI
 
 RATE_STEP = {"geojson": 1e-6, "gpkg": 1e-6, "shapefile": 0.005, "taskdata": 0.005}
@@ -42,6 +44,7 @@ class FileZones:
     zones: tuple[FileZone, ...]
     faults: tuple[Fault, ...] = ()
     boundary: Any = None
+    cells: TaskCells | None = None  # of a grid, instead of zones
 
 
 def read_zones(path: Path) -> FileZones:
@@ -213,8 +216,12 @@ def _taskdata(path: Path) -> FileZones:
     if b"<!DOCTYPE" in data.upper() or b"<!ENTITY" in data.upper():
         raise ValueError("it declares a document type or entities")
     root = ElementTree.fromstring(data)
-    faults = _task_faults(path, root)
+    faults = [
+        Fault(file=path.name, place=place, what=what) for place, what in task_faults(path, root)
+    ]
     tasks = root.findall("TSK")
+    if len(tasks) == 1 and tasks[0].find("GRD") is not None:
+        return _task_cells(path, root, tasks[0], faults)
     zones: list[FileZone] = []
     for zone in tasks[0].findall("TZN") if tasks else []:
         polygons = [_task_polygon(one) for one in zone.findall("PLN")]
@@ -232,6 +239,16 @@ def _taskdata(path: Path) -> FileZones:
     return FileZones(kind="taskdata", zones=tuple(zones), faults=tuple(faults))
 
 
+def _task_cells(
+    path: Path, root: ElementTree.Element, task: ElementTree.Element, faults: list[Fault]
+) -> FileZones:
+    cells, said = read_cells(path, task)
+    faults += [Fault(file=path.name, place=place, what=what) for place, what in said]
+    fields = [_task_polygon(one) for one in root.iterfind("PFD/PLN")]
+    outline = shapely.union_all([one for one in fields if one is not None]) if fields else None
+    return FileZones(kind="taskdata", zones=(), faults=tuple(faults), boundary=outline, cells=cells)
+
+
 def _task_rate(value: ElementTree.Element | None) -> float | None:
     if value is None:
         return None
@@ -241,80 +258,12 @@ def _task_rate(value: ElementTree.Element | None) -> float | None:
 
 
 def _task_polygon(polygon: ElementTree.Element) -> Any:
-    rings = {"1": [], "2": []}  # type: dict[str, list[list[tuple[float, float]]]]
+    """The area of a polygon element: outer rings less inner ones."""
+    rings: dict[str, list[Polygon]] = {"1": [], "2": []}
     for line in polygon.findall("LSG"):
         points = [(float(one.get("D", "nan")), float(one.get("C", "nan"))) for one in line]
-        rings.setdefault(line.get("A", ""), []).append(points)
-    return Polygon(rings["1"][0], rings["2"]) if rings["1"] else None
-
-
-def _task_faults(path: Path, root: ElementTree.Element) -> list[Fault]:
-    """Rules of the standard that its schema does not hold."""
-    found: list[tuple[str, str]] = []
-    if path.name != "TASKDATA.XML":
-        found.append(("file", "the name must be TASKDATA.XML"))
-    ids = [one.get("A", "") for one in root.iter() if one.tag in ID_TAGS]
-    found += [
-        ("ids", f"`{one}` stands twice") for one in sorted({i for i in ids if ids.count(i) > 1})
-    ]
-    for one in root.iter():
-        for key in ("C", "D", "E", "F", "I"):
-            value = one.get(key, "")
-            if value[:3] in ID_TAGS and value[3:].isdigit() and value not in ids:
-                found.append((one.tag, f"{key} names `{value}`, which is not there"))
-        for key in ("B", "C"):
-            if one.tag in ("CTR", "FRM", "PFD", "PDT", "TSK", "TZN") and len(one.get(key, "")) > 32:
-                found.append((one.tag, f"{key} is longer than 32 characters"))
-    tasks = root.findall("TSK")
-    if len(tasks) != 1:
-        found.append(("TSK", f"{len(tasks)} tasks; one is expected"))
-    for task in tasks:
-        found += _zone_code_faults(task)
-    for line in root.iter("LSG"):
-        points = [(one.get("C"), one.get("D")) for one in line]
-        if len(points) < 4 or points[0] != points[-1]:
-            found.append(("LSG", "a ring is not closed"))
-        found += [
-            ("PNT", f"{c}, {d} is no plain latitude and longitude")
-            for c, d in points
-            if not (_plain_degree(c, 90) and _plain_degree(d, 180))
-        ]
-    return [Fault(file=path.name, place=place, what=what) for place, what in found]
-
-
-ID_TAGS = ("CTR", "FRM", "PFD", "PDT", "VPN", "TSK", "DVC", "GRD")
-
-
-def _plain_degree(text: str | None, most: float) -> bool:
-    if text is None or "e" in text.lower():
-        return False
-    value = _real(text)
-    return value is not None and abs(value) <= most and len(text.partition(".")[2]) <= 9
-
-
-def _zone_code_faults(task: ElementTree.Element) -> list[tuple[str, str]]:
-    found = []
-    codes = [zone.get("A", "") for zone in task.findall("TZN")]
-    found += [
-        ("TZN", f"code {one} stands twice")
-        for one in sorted({c for c in codes if codes.count(c) > 1})
-    ]
-    found += [
-        ("TZN", f"`{one}` is no code from 0 to 254")
-        for one in codes
-        if not one.isdigit() or int(one) > 254
-    ]
-    for key, words in (("H", "default"), ("I", "position lost"), ("J", "out of field")):
-        if task.get(key) not in codes:
-            found.append(("TSK", f"the {words} zone `{task.get(key)}` is not there"))
-    if len(task.findall("GRD")) > 1:
-        found.append(("GRD", "more than one grid in a task"))
-    if task.findall("GRD") and any(zone.findall("PLN") for zone in task.findall("TZN")):
-        found.append(("GRD", "polygons and a grid in one task"))
-    for value in task.iter("PDV"):
-        counts = _whole(value.get("B"))
-        if value.get("A") not in (MASS_DDI, VOLUME_DDI):
-            found.append(("PDV", f"`{value.get('A')}` is not a product rate entry"))
-        if counts is None or not 0 <= counts < 2**31:
-            found.append(("PDV", f"`{value.get('B')}` is not a rate"))
-    return found
+        rings.setdefault(line.get("A", ""), []).append(Polygon(points))
+    if len(rings["1"]) == 1:
+        return Polygon(rings["1"][0].exterior, [one.exterior for one in rings["2"]])
+    whole = shapely.union_all(rings["1"])
+    return shapely.difference(whole, shapely.union_all(rings["2"])) if rings["1"] else None

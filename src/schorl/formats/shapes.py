@@ -15,8 +15,10 @@ from schorl.errors import OutputProblem
 from schorl.findings import finding
 from schorl.geodesy import WGS84, transform_geometry
 from schorl.model.prescription import ZoneRate
+from schorl.model.profile import Profile
 from schorl.model.record import RunRecord
 from schorl.model.zones import Zone
+from schorl.polygons import without_holes
 
 DECIMALS = 7  # about 1 cm
 TASK_DECIMALS = 9
@@ -24,16 +26,32 @@ TASK_DECIMALS = 9
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class ZoneShape:
-    """A zone in longitude and latitude with its rate."""
+    """A zone in longitude and latitude with its rate; ``holes`` false cuts its holes open."""
 
     zone: Zone
     rate: ZoneRate
     geometry: Polygon | MultiPolygon
+    holes: bool = True
 
     @property
     def parts(self) -> list[Polygon]:
         """Single polygons, outer rings counter-clockwise, holes clockwise."""
-        return [orient(part) for part in shapely.get_parts(self.geometry)]
+        parts = list(shapely.get_parts(self.geometry))
+        if not self.holes:
+            parts = [piece for part in parts for piece in without_holes(part)]
+        return [orient(part) for part in parts]
+
+
+def profile_of(record: RunRecord) -> Profile:
+    """What the controller takes; everything where no profile was chosen."""
+    return record.settings.profile or Profile()
+
+
+def rate_column(record: RunRecord, shape: ZoneShape) -> float:
+    """A zone's product rate as the rate column has it: the profile's unit and decimals."""
+    profile = record.settings.profile
+    rate = shape.rate.product_rate
+    return rate if profile is None else profile.rate(rate, record.prescription.unit)
 
 
 def zone_shapes(record: RunRecord, *, decimals: int = DECIMALS) -> tuple[ZoneShape, ...]:
@@ -53,8 +71,9 @@ def zone_shapes(record: RunRecord, *, decimals: int = DECIMALS) -> tuple[ZoneSha
     if moved is None:
         what = "the zones are no longer a clean coverage after rounding to degrees"
         raise OutputProblem([finding("OUT-ROUNDING", where="zones", what=what)])
+    holes = profile_of(record).holes
     return tuple(
-        ZoneShape(zone=zone, rate=rate, geometry=geometry)
+        ZoneShape(zone=zone, rate=rate, geometry=geometry, holes=holes)
         for zone, rate, geometry in zip(zones, prescription.rates, moved, strict=True)
     )
 

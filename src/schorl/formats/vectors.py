@@ -15,7 +15,13 @@ import shapely
 
 from schorl.errors import OutputProblem
 from schorl.findings import finding
-from schorl.formats.shapes import ZoneShape, attributes, boundary_degrees
+from schorl.formats.shapes import (
+    ZoneShape,
+    attributes,
+    boundary_degrees,
+    profile_of,
+    rate_column,
+)
 from schorl.geodesy import WGS84, transform_geometry, transform_points
 from schorl.model.record import RunRecord
 
@@ -27,18 +33,21 @@ FIXED_MOMENT = "2026-01-01T00:00:00.000Z"
 
 
 def geojson_bytes(record: RunRecord, shapes: Iterable[ZoneShape]) -> bytes:
-    """Zones as RFC 7946 GeoJSON: WGS 84, seven decimals, right-hand rings, no `crs` member."""
+    """Zones as RFC 7946 GeoJSON: WGS 84, seven decimals, right-hand rings, no `crs` member.
+
+    Where the controller's profile asks for single parts, or takes no holes, each part is a feature.
+    """
+    profile = profile_of(record)
+    unit = profile.rate_unit(record.prescription.unit)
+    single = profile.single_parts or not profile.holes
     features = []
     for shape in shapes:
+        said = attributes(record, shape) | {
+            "product_rate": round(rate_column(record, shape), 6), "product_unit": unit,
+        }  # fmt: skip
         rings = [_rings(part) for part in shape.parts]
-        geometry = (
-            {"type": "Polygon", "coordinates": rings[0]}
-            if len(rings) == 1
-            else {"type": "MultiPolygon", "coordinates": rings}
-        )
-        features.append(
-            {"type": "Feature", "properties": attributes(record, shape), "geometry": geometry}
-        )
+        for geometry in _geometries(rings, single=single):
+            features.append({"type": "Feature", "properties": said, "geometry": geometry})
     west, south, east, north = boundary_degrees(record).bounds
     document = {
         "type": "FeatureCollection",
@@ -48,13 +57,21 @@ def geojson_bytes(record: RunRecord, shapes: Iterable[ZoneShape]) -> bytes:
     return json.dumps(document, ensure_ascii=False, allow_nan=False, indent=1).encode("utf-8")
 
 
+def _geometries(rings: list[Any], *, single: bool) -> list[dict[str, Any]]:
+    if len(rings) == 1 or single:
+        return [{"type": "Polygon", "coordinates": one} for one in rings]
+    return [{"type": "MultiPolygon", "coordinates": rings}]
+
+
 def _rings(part: Any) -> list[list[list[float]]]:
     rings = [part.exterior, *part.interiors]
     return [[[float(x), float(y)] for x, y in ring.coords] for ring in rings]
 
 
-def write_shapefile(folder: Path, shapes: Iterable[ZoneShape]) -> None:
-    """BORON01.* with RATE N(10,2) and ZONE N(4,0), one single-part polygon a row, and its zip.
+def write_shapefile(folder: Path, record: RunRecord, shapes: Iterable[ZoneShape]) -> None:
+    """BORON01.* with RATE and ZONE N(4,0), one single-part polygon a row, and its zip.
+
+    RATE is N(10,2), or has the decimals and unit of the controller's profile.
 
     Raises
     ------
@@ -63,13 +80,17 @@ def write_shapefile(folder: Path, shapes: Iterable[ZoneShape]) -> None:
     """
     import fiona
 
+    decimals = profile_of(record).rate_decimals
     rows = [(part, shape) for shape in shapes for part in shape.parts]
     for _, shape in rows:
         if not 0 <= shape.rate.product_rate <= LARGEST_RATE:
             what = f"rate {shape.rate.product_rate:g} of zone {shape.zone.number} does not fit"
             raise OutputProblem([finding("OUT-RATE", where="shapefile", what=what)])
     path = folder / f"{SHAPEFILE_STEM}.shp"
-    schema = {"geometry": "Polygon", "properties": {"RATE": "float:10.2", "ZONE": "int:4"}}
+    schema = {
+        "geometry": "Polygon",
+        "properties": {"RATE": f"float:10.{decimals}", "ZONE": "int:4"},
+    }
     with fiona.open(
         path, "w", driver="ESRI Shapefile", schema=schema, crs=WGS84, encoding="UTF-8"
     ) as layer:
@@ -78,7 +99,7 @@ def write_shapefile(folder: Path, shapes: Iterable[ZoneShape]) -> None:
                 "type": "Feature",
                 "geometry": shapely.geometry.mapping(part),
                 "properties": {
-                    "RATE": round(shape.rate.product_rate, 2),
+                    "RATE": round(rate_column(record, shape), decimals),
                     "ZONE": shape.zone.number,
                 },
             }

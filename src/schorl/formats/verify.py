@@ -12,12 +12,16 @@ from typing import Any
 import numpy as np
 import shapely
 
-from schorl.formats.pack import complete_swaps
-from schorl.formats.reading import RATE_STEP, Fault, FileZones, read_zones
+from schorl.formats.reading import RATE_STEP, Fault, FileZone, FileZones, read_zones
+from schorl.formats.reading_grid import treated_outside
+from schorl.formats.whole_folder import complete_swaps
+from schorl.formats.writing import safe_name
 from schorl.geodesy import WGS84, area_ha, field_crs, transform_geometry
+from schorl.model.profile import RATE_UNITS
 
 GAP_M2, GAP_M2_PER_M = 0.1, 0.02  # cover after rounding: 0.1 m² and 2 cm along the edge
 TOTAL_TOLERANCE = 0.005
+ZIPPED, MOST_ZIPPED = (".shp", ".shx", ".dbf", ".prj", ".cpg", ".xml", ".bin"), 2**26
 ZONE_FILES = ("prescription.geojson", "shapefile/BORON01.shp", "prescription.gpkg",
               "TASKDATA/TASKDATA.XML")  # fmt: skip
 
@@ -31,16 +35,18 @@ class Verification:
     record: dict[str, Any] | None
 
 
-def verify(path: Path, *, boundary: Path | None = None) -> Verification:
+def verify(path: Path, *, boundary: Path | None = None, held: Any = None) -> Verification:
     """Verify a pack's folder, a TASKDATA folder or a single file.
 
     Parameters
     ----------
     boundary
         A boundary file to hold the zones to; a pack brings its own.
+    held
+        The same as a geometry in degrees.
     """
     complete_swaps(path)
-    outline = _outline(boundary) if boundary is not None else None
+    outline = _outline(boundary) if boundary is not None else held
     if not path.exists():
         return _answer([Fault(file=path.name, place="file", what="there is nothing here")], None)
     if path.is_dir() and (path / "manifest.json").exists():
@@ -55,7 +61,10 @@ def verify(path: Path, *, boundary: Path | None = None) -> Verification:
         return _answer(_raster_faults(path), None)
     if path.suffix.lower() == ".zip":
         return _answer(_zip_faults(path, outline), None)
-    return _answer(zone_faults(path.name, read_zones(path), outline, None), None)
+    read = read_zones(path)
+    if read.cells is not None:
+        return _answer(cell_faults(path.name, read, outline, None, ()), None)
+    return _answer(zone_faults(path.name, read, outline, None), None)
 
 
 def _answer(faults: list[Fault], record: dict[str, Any] | None) -> Verification:
@@ -77,13 +86,24 @@ def _verify_pack(folder: Path, outline: Any) -> tuple[list[Fault], dict[str, Any
     package = folder / "prescription.gpkg"
     if held is None and package.exists():
         held = read_zones(package).boundary
-    for name in ZONE_FILES:
-        if (folder / name).exists():
-            faults += zone_faults(name, read_zones(folder / name), held, summary)
+    zones = read_zones(package).zones if package.exists() else ()
+    for path in _zone_files(folder):
+        name = path.relative_to(folder).as_posix()
+        read = read_zones(path)
+        if read.cells is not None:
+            faults += cell_faults(name, read, held, summary, zones)
+        else:
+            faults += zone_faults(name, read, held, summary)
     for raster in sorted((folder / "surfaces").glob("*.tif")):
         faults += _raster_faults(raster)
     faults += _total_faults(summary)
     return faults, summary
+
+
+def _zone_files(folder: Path) -> list[Path]:
+    """Files of a pack that hold zones or rates, in the order a contractor looks for them."""
+    named = [folder / name for name in ZONE_FILES if (folder / name).exists()]
+    return [*named, *sorted(folder.glob("task_data/*/TASKDATA/TASKDATA.XML"))]
 
 
 def _records(folder: Path) -> tuple[list[Fault], dict[str, Any] | None, dict[str, Any] | None]:
@@ -134,6 +154,43 @@ def zone_faults(
     faults += _cover_faults(name, [zone.geometry for zone in read.zones], outline)
     if summary is not None:
         faults += _record_faults(name, read, summary)
+    return faults
+
+
+def cell_faults(
+    name: str,
+    read: FileZones,
+    outline: Any,
+    summary: dict[str, Any] | None,
+    zones: tuple[FileZone, ...],
+) -> list[Fault]:
+    """Faults of a grid of rates: its own, ground outside the field, and rates against the record.
+
+    ``zones`` are those of the pack's own GeoPackage: a cell has the rate of the zone under its
+    middle, or none where it touches ground that is shut off.
+    """
+    faults = [Fault(file=name, place=one.place, what=one.what) for one in read.faults]
+    cells = read.cells
+    assert cells is not None
+    for where in (outline, read.boundary):
+        count = 0 if where is None else treated_outside(cells, where)
+        if count:
+            what = f"{count} cells outside the field get product"
+            faults.append(Fault(file=name, place="cells", what=what))
+    if summary is None or faults:
+        return faults
+    recorded = {row["zone"]: row for row in summary["zones"]}
+    step = RATE_STEP[read.kind] * (1 + 1e-9) + 1e-9
+    for zone in zones:
+        row = recorded.get(zone.number)
+        if row is None or zone.geometry is None:
+            continue
+        shapely.prepare(zone.geometry)
+        own = cells.rates[shapely.contains_xy(zone.geometry, cells.east, cells.north)]
+        wrong = own[(np.abs(own - row["product_rate"]) > step) & (own != 0)]
+        if len(wrong):
+            what = f"a cell has {wrong[0]:g}, recorded {row['product_rate']:g}"
+            faults.append(Fault(file=name, place=f"zone {zone.number}", what=what))
     return faults
 
 
@@ -190,7 +247,7 @@ def _record_faults(name: str, read: FileZones, summary: dict[str, Any]) -> list[
     """Rates, zones and total against the record."""
     faults = []
     recorded = {row["zone"]: row for row in summary["zones"]}
-    step = RATE_STEP[read.kind] * (1 + 1e-9) + 1e-9
+    per, step = _scale(read.kind, summary)
     total = 0.0
     for zone in read.zones:
         row = recorded.get(zone.number)
@@ -199,18 +256,31 @@ def _record_faults(name: str, read: FileZones, summary: dict[str, Any]) -> list[
             faults.append(Fault(file=name, place=f"zone {zone.number}", what=what))
             continue
         assert zone.rate is not None
-        if abs(zone.rate - row["product_rate"]) > step:
-            what = f"rate {zone.rate:g}, recorded {row['product_rate']:g}"
+        if abs(zone.rate * per - row["product_rate"]) > step:
+            what = f"rate {zone.rate:g}, recorded {row['product_rate'] / per:g}"
             faults.append(Fault(file=name, place=f"zone {zone.number}", what=what))
-        total += zone.rate * area_ha(zone.geometry, crs=WGS84)
+        total += zone.rate * per * area_ha(zone.geometry, crs=WGS84)
     gone = set(recorded) - {zone.number for zone in read.zones}
     for number in sorted(gone):
         faults.append(Fault(file=name, place=f"zone {number}", what="is missing"))
     said = summary["totals"]["product"]
-    if abs(total - said) > TOTAL_TOLERANCE * max(said, 1.0):
+    rounded = step * sum(row["area_ha"] for row in recorded.values() if row["product_rate"] > 0)
+    if abs(total - said) > TOTAL_TOLERANCE * max(said, 1.0) + rounded:
         what = f"its rates add up to {total:.1f}, recorded {said:.1f}"
         faults.append(Fault(file=name, place="total", what=what))
     return faults
+
+
+def _scale(kind: str, summary: dict[str, Any]) -> tuple[float, float]:
+    """What one unit of a file's rate column is in kg/ha or L/ha, and how far rounding may be off.
+
+    The controller's profile sets unit and decimals of what it reads; it rounds down.
+    """
+    profile = summary.get("profile")
+    if profile is None or kind not in ("geojson", "shapefile"):
+        return 1.0, RATE_STEP[kind] * (1 + 1e-9) + 1e-9
+    per = RATE_UNITS[profile["rate_unit"]][1]
+    return per, per * 10.0 ** -profile["rate_decimals"] * (1 + 1e-6)
 
 
 def _total_faults(summary: dict[str, Any]) -> list[Fault]:
@@ -253,19 +323,38 @@ def _raster_faults(path: Path) -> list[Fault]:
 
 
 def _zip_faults(path: Path, outline: Any) -> list[Fault]:
-    """A zipped shapefile: unpacked to names of ours, then read as any other."""
+    """A zipped shapefile or task data set: unpacked to names of ours, then read as any other."""
     import tempfile
     import zipfile
 
     try:
         with zipfile.ZipFile(path) as archive, tempfile.TemporaryDirectory() as folder:
-            for info in archive.infolist()[:20]:
-                suffix = Path(info.filename).suffix.lower()
-                if suffix in (".shp", ".shx", ".dbf", ".prj", ".cpg") and info.file_size < 2**26:
-                    Path(folder, f"zipped{suffix}").write_bytes(archive.read(info))
-            inner = Path(folder, "zipped.shp")
-            if not inner.exists():
-                return [Fault(file=path.name, place="archive", what="no shapefile in it")]
-            return zone_faults(path.name, read_zones(inner), outline, None)
+            inner = _unpacked(archive, Path(folder))
+            if inner is None:
+                what = "neither a shapefile nor a TASKDATA folder in it"
+                return [Fault(file=path.name, place="archive", what=what)]
+            return [
+                Fault(file=path.name, place=f"{one.file}, {one.place}", what=one.what)
+                for one in verify(inner, held=outline).faults
+            ]
     except (zipfile.BadZipFile, OSError, NotImplementedError) as reason:
         return [Fault(file=path.name, place="archive", what=f"cannot be read: {reason}")]
+
+
+def _unpacked(archive: Any, folder: Path) -> Path | None:
+    """The set inside an archive, at most 20 members of 64 MB under names that lead nowhere else."""
+    for info in archive.infolist()[:20]:
+        inside = Path(info.filename)
+        named = f"zipped{inside.suffix.lower()}"
+        if (
+            len(inside.parts) == 2
+            and inside.parts[0] == "TASKDATA"
+            and safe_name(inside.name) == inside.name
+        ):
+            named = inside.name
+        if inside.suffix.lower() in ZIPPED and info.file_size < MOST_ZIPPED:
+            (folder / named).write_bytes(archive.read(info))
+    for name in ("TASKDATA.XML", "zipped.shp"):
+        if (folder / name).exists():
+            return folder / name
+    return None

@@ -7,26 +7,15 @@ person writes others for a machine at hand. Every key may be left out; what is l
 from __future__ import annotations
 
 import difflib
-import math
 import tomllib
-from dataclasses import asdict, dataclass, fields
+from dataclasses import fields
 from importlib.resources import files
 from importlib.resources.abc import Traversable
 
-from schorl import units
 from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, finding
+from schorl.model.profile import FORMATS, LAYOUTS, VERSIONS, Profile
 
-FORMATS = ("geojson", "shapefile", "geopackage", "geotiff", "task data")
-LAYOUTS = ("zones", "grid 1", "grid 2")
-VERSIONS = ("4", "3.3")
-#: Unit of the rate column -> what leaves the machine, metric over this unit.
-RATE_UNITS = {
-    "kg/ha": ("kg", 1.0),
-    "lb/ac": ("kg", units.KG_HA_PER_LB_ACRE),
-    "L/ha": ("L", 1.0),
-    "gal/ac": ("L", units.L_HA_PER_US_GAL_ACRE),
-}
 CHOICES = {
     "task_data_layout": LAYOUTS,
     "task_data_version": VERSIONS,
@@ -41,48 +30,6 @@ COUNTS = {
     "name_length": (1, 255),
     "rate_decimals": (0, 6),
 }
-FLOOR_EDGE = 1e-6
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Profile:
-    """What one controller takes.
-
-    ``most_vertices`` counts the points of one polygon, holes and closing points included, and
-    ``most_polygons`` single polygons where ``single_parts`` holds, else zones. ``holes`` false
-    means that polygons may not have any.
-    """
-
-    title: str = ""
-    formats: tuple[str, ...] = FORMATS
-    task_data_version: str = "4"
-    task_data_layout: str = "zones"
-    most_polygons: int | None = None
-    most_vertices: int | None = None
-    most_vertices_in_all: int | None = None
-    single_parts: bool = False
-    holes: bool = True
-    name_length: int | None = None
-    rate_decimals: int = 2
-    mass_unit: str = "kg/ha"
-    volume_unit: str = "L/ha"
-
-    def rate_unit(self, unit: str) -> str:
-        """Unit of the rate column for a product counted in "kg" or "L"."""
-        return self.mass_unit if unit == "kg" else self.volume_unit
-
-    def rate(self, per_ha: float, unit: str) -> float:
-        """A rate as the controller gets it: its unit, rounded down to its decimals.
-
-        Down, so that no rounding adds boron; a figure within a millionth of a step counts as it.
-        """
-        scale = 10.0**self.rate_decimals
-        value = per_ha / RATE_UNITS[self.rate_unit(unit)][1]
-        return math.floor(value * scale + FLOOR_EDGE) / scale
-
-    def as_mapping(self) -> dict[str, object]:
-        """Keys and values, for a record or manifest."""
-        return asdict(self)
 
 
 def read_profile(text: str, *, where: str) -> Profile:

@@ -18,8 +18,9 @@ from shapely.geometry import Polygon
 
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
-from schorl.machinery.profiles import Profile
 from schorl.model.field import Area
+from schorl.model.profile import Profile
+from schorl.polygons import without_holes
 
 TOLERANCES_M = (0.25, 0.5, 1.0, 2.0, 3.0, 4.0, 6.0, 8.0, 12.0)
 SLIVER_M2 = 1e-6
@@ -53,7 +54,6 @@ class Shape:
     polygons: int
     vertices: int  # of the largest polygon
     vertices_in_all: int
-    holes: int
 
     def over(self, profile: Profile) -> tuple[str, ...]:
         """What is over a profile's limits, in words."""
@@ -61,7 +61,6 @@ class Shape:
             "polygons": (self.polygons, profile.most_polygons),
             "points in one polygon": (self.vertices, profile.most_vertices),
             "points in all": (self.vertices_in_all, profile.most_vertices_in_all),
-            "holes": (self.holes, None if profile.holes else 0),
         }
         return tuple(
             f"{count} {name}, the controller takes {most}"
@@ -70,17 +69,22 @@ class Shape:
         )
 
 
-def shape_of(areas: Sequence[Area], *, single_parts: bool) -> Shape:
-    """Counts of some areas; parts of an area are polygons of their own where they must be single."""
-    kept = [area for area in areas if not area.is_empty]
-    rows = list(shapely.get_parts(kept)) if single_parts else kept
-    points = [int(shapely.get_num_coordinates(row)) for row in rows]
-    holes = sum(len(cast("Polygon", part).interiors) for part in shapely.get_parts(kept))
+def shape_of(areas: Sequence[Area], *, single_parts: bool, holes: bool = True) -> Shape:
+    """Counts of some areas as the controller gets them.
+
+    Parts of an area are polygons of their own where they must be single, and where holes must be
+    cut open.
+    """
+    kept: list[Area] = [area for area in areas if not area.is_empty]
+    rows = [cast("Polygon", part) for part in shapely.get_parts(kept)]
+    if not holes:
+        rows = [piece for part in rows for piece in without_holes(part)]
+    shown = rows if single_parts or not holes else kept
+    points = [int(shapely.get_num_coordinates(row)) for row in shown]
     return Shape(
-        polygons=len(rows),
+        polygons=len(shown),
         vertices=max(points, default=0),
         vertices_in_all=sum(points),
-        holes=holes,
     )
 
 
@@ -135,7 +139,7 @@ def fit_zones(
 
 
 def _shape(areas: Sequence[Area], profile: Profile) -> Shape:
-    return shape_of(areas, single_parts=profile.single_parts)
+    return shape_of(areas, single_parts=profile.single_parts, holes=profile.holes)
 
 
 def _said(error: RateError, tolerance_m: float, profile: Profile) -> tuple[Finding, ...]:
@@ -174,7 +178,7 @@ def _fewer_parts(
     order = sorted(range(len(parts)), key=lambda one: (parts[one].area, one))
     for one in order:
         joined = _owned(parts, owner, len(areas))
-        if shape_of(joined, single_parts=profile.single_parts).polygons <= most:
+        if _shape(joined, profile).polygons <= most:
             return joined
         if parts[one].area > MOST_JOIN_M2:
             break

@@ -7,6 +7,7 @@ from datetime import date
 from enum import StrEnum
 
 from schorl.model.field import Area
+from schorl.model.profile import Profile
 from schorl.units import UnitSystem
 
 
@@ -190,3 +191,4 @@ class RunSettings:
     made_on: date | None = None
     prepared_by: str = ""
     overrides: tuple[Override, ...] = ()
+    profile: Profile | None = None  # what the controller takes; None: everything

@@ -59,6 +59,7 @@ def summary(record: RunRecord) -> dict[str, Any]:
         "overrides": [plain_fields(one) for one in record.settings.overrides],
         "sources": [dict(row) for row in prescription.sources],
         "adapted_from": record.adapted_from,
+        "profile": _profile(record),
     }
 
 
@@ -95,6 +96,14 @@ def _json(value: Any) -> Any:
     if hasattr(value, "__dataclass_fields__"):
         return plain_fields(value)
     return float(value)
+
+
+def _profile(record: RunRecord) -> dict[str, Any] | None:
+    """What the controller takes, with the unit its rate column has for this product."""
+    profile = record.settings.profile
+    if profile is None:
+        return None
+    return plain_fields(profile) | {"rate_unit": profile.rate_unit(record.prescription.unit)}
 
 
 def _crop(record: RunRecord) -> dict[str, Any]:

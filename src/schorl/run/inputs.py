@@ -11,6 +11,7 @@ from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, errors_among, finding
 from schorl.jobs import AppliedPart, Job
 from schorl.model.field import Area, Field
+from schorl.model.profile import Profile
 from schorl.model.reading import Reading, SampleHints
 from schorl.model.record import Recognition
 from schorl.model.samples import SampleSet
@@ -74,7 +75,9 @@ def read_inputs(job: Job, folder: Path) -> Inputs:
     return Inputs(
         field=field,
         samples=samples,
-        settings=resolve(job, field_name=job.field or field.name, layers=layers),
+        settings=resolve(
+            job, field_name=job.field or field.name, layers=layers, profile=_profile(job, folder)
+        ),
         findings=tuple(notes.findings),
         recognised=tuple(notes.recognised),
         inputs_sha256=_fingerprints(notes.read),
@@ -169,6 +172,12 @@ def _read_layers(job: Job, folder: Path, field: Field, notes: Notebook) -> Layer
         extras=_extras(job, folder, field, notes),
         own_targets=_own_targets(job, folder, notes),
     )
+
+
+def _profile(job: Job, folder: Path) -> Profile | None:
+    from schorl.run.profiles import profile_named
+
+    return profile_named(job.profile, folder) if job.profile else None
 
 
 def _areas(given: str | None, folder: Path, field: Field, notes: Notebook) -> tuple[Area, ...]:

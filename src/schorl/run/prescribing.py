@@ -92,7 +92,7 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
     _keep(found, rated.findings)
     settings = replace(settings, machine=rated.machine)
     found.extend(_override_notes(settings.overrides))
-    return RunRecord(
+    record = RunRecord(
         field=field,
         grid=grid,
         samples=samples,
@@ -106,6 +106,17 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
         inputs_sha256=inputs.inputs_sha256,
         versions=versions(),
     )
+    return _fitted(record)
+
+
+def _fitted(record: RunRecord) -> RunRecord:
+    """The record with zones that its controller's profile allows; as it is without one."""
+    from schorl.steps.adapting import Change, adapt
+
+    profile = record.settings.profile
+    if profile is None:
+        return record
+    return adapt(record, Change(profile=profile), source="").record
 
 
 def _keep(found: list[Finding], more: tuple[Finding, ...]) -> None:

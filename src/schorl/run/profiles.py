@@ -6,7 +6,8 @@ from pathlib import Path
 
 from schorl.errors import Refusal
 from schorl.findings import finding
-from schorl.machinery.profiles import Profile, read_profile, shipped_profile
+from schorl.machinery.profiles import read_profile, shipped_profile
+from schorl.model.profile import Profile
 
 
 def profile_named(name: str, folder: Path) -> Profile:

@@ -9,6 +9,7 @@ from schorl.errors import UsageProblem
 from schorl.findings import Finding, finding
 from schorl.jobs import Job
 from schorl.model.field import Area
+from schorl.model.profile import Profile
 from schorl.model.settings import (
     AppliedBoron,
     CropSettings,
@@ -122,7 +123,9 @@ def _default_interpretation(job: Job) -> str:
     return "the target that was given" if own else "the target by crop need"
 
 
-def resolve(job: Job, *, field_name: str, layers: Layers) -> RunSettings:
+def resolve(
+    job: Job, *, field_name: str, layers: Layers, profile: Profile | None = None
+) -> RunSettings:
     """Settings of a run.
 
     Raises
@@ -147,6 +150,7 @@ def resolve(job: Job, *, field_name: str, layers: Layers) -> RunSettings:
         made_on=job.made_on,
         prepared_by=job.prepared_by,
         overrides=tuple(Override(**one.model_dump()) for one in job.override),
+        profile=profile,
     )
 
 

@@ -11,11 +11,11 @@ import shapely
 from schorl.errors import OwnFault
 from schorl.findings import Finding, finding
 from schorl.geodesy import area_ha
-from schorl.machinery.profiles import Profile
 from schorl.machinery.simplify import fit_zones
 from schorl.model.arrays import Counts, Floats
 from schorl.model.field import Area
 from schorl.model.prescription import ZoneRate
+from schorl.model.profile import Profile
 from schorl.model.record import RunRecord
 from schorl.model.settings import Machine, Product, RunSettings
 from schorl.model.zones import Zone, ZoneKind, ZoneMap

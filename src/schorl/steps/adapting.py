@@ -72,7 +72,7 @@ def adapt(record: RunRecord, change: Change, *, source: str) -> Adapted:
     settled = replace(job, machine=machine.machine)
     rows = replace(rows, settings=settled)
     ruled = [
-        _ruled(record, zones.zones[place], wanted[place], machine.boron_kg_ha[place])
+        _ruled(record, zones.zones[place], wanted[place], machine.boron_kg_ha[place], source=source)
         for place in range(len(areas))
     ]
     rated = rated_zones(rows, ruled, machine, job=job, sources=_kept_sources(record))
@@ -95,6 +95,7 @@ def _new_job(settings: RunSettings, change: Change) -> RunSettings:
         settings,
         product=change.product or settings.product,
         machine=change.machine or settings.machine,
+        profile=change.profile or settings.profile,
         zoning=replace(
             zoning,
             keep_off=(*zoning.keep_off, *change.keep_off),
@@ -137,7 +138,7 @@ def _wanted(rows: ZoneRows, place: int, record: RunRecord) -> float:
     return min(old.boron_kg_ha, chance_limit_kg_ha(cells, unevenness=unevenness_of(job)))
 
 
-def _ruled(record: RunRecord, zone: Zone, wanted: float, given: float) -> Ruled:
+def _ruled(record: RunRecord, zone: Zone, wanted: float, given: float, *, source: str) -> Ruled:
     """What ruled a zone before, unless the change did now."""
     old = rate_by_number(record).get(zone.number)
     if zone.kind is not ZoneKind.ZONE or old is None:
@@ -145,6 +146,8 @@ def _ruled(record: RunRecord, zone: Zone, wanted: float, given: float) -> Ruled:
         return Ruled(
             need_kg_ha=0.0, wanted_kg_ha=0.0, boron_kg_ha=0.0, by=by, limits={str(by): 0.0}
         )
+    # Nothing is earlier where a new prescription is only fitted to its controller.
+    earlier = {EARLIER: old.boron_kg_ha} if source else {}
     by = old.ruled_by
     if wanted < old.boron_kg_ha - ROUNDING_KG_HA:
         by = Limit.CHANCE_OF_EXCESS
@@ -155,7 +158,7 @@ def _ruled(record: RunRecord, zone: Zone, wanted: float, given: float) -> Ruled:
         wanted_kg_ha=wanted,
         boron_kg_ha=given,
         by=by,
-        limits={**old.limits_kg_ha, EARLIER: old.boron_kg_ha},
+        limits={**old.limits_kg_ha, **earlier},
     )
 
 

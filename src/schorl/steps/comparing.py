@@ -96,6 +96,8 @@ def _compare(
     same = before.identity == after.identity
     progress("comparing", 0, 3)
     refused = _not_comparable(before.samples, after.samples)
+    if not refused and not same and _same_samples(before.samples, after.samples, pairs):
+        refused = "both packs rest on the same samples"
     paired = _are_paired(pairs, before.samples, after.samples)
     shift = None if refused else _shift(pairs, before.samples, after.samples, paired=paired)
     doubted = shift is not None and bool(shift.warning)
@@ -153,6 +155,15 @@ def _not_comparable(before: SampleSet, after: SampleSet) -> str:
     if abs(first.depth_cm - second.depth_cm) > SAME_DEPTH_CM:
         return f"samples reach {first.depth_cm:g} cm in one season, {second.depth_cm:g} cm in the other"
     return ""
+
+
+def _same_samples(before: SampleSet, after: SampleSet, pairs: SitePairs) -> bool:
+    """Whether two packs were made from one campaign: same sites, same day, same values."""
+    return (
+        len(pairs) == len(before) == len(after) > 1
+        and before.campaign.sampled_on == after.campaign.sampled_on
+        and not pairs.change_mg_kg.any()
+    )
 
 
 def _are_paired(pairs: SitePairs, before: SampleSet, after: SampleSet) -> bool:
