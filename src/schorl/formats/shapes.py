@@ -34,6 +34,11 @@ class ZoneShape:
     holes: bool = True
 
     @property
+    def whole(self) -> MultiPolygon:
+        """The zone as one geometry, its holes in place; rings turned as in ``parts``."""
+        return MultiPolygon([orient(part) for part in shapely.get_parts(self.geometry)])
+
+    @property
     def parts(self) -> list[Polygon]:
         """Single polygons, outer rings counter-clockwise, holes clockwise."""
         parts = list(shapely.get_parts(self.geometry))

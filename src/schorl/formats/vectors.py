@@ -146,7 +146,7 @@ def write_geopackage(path: Path, record: RunRecord, shapes: Iterable[ZoneShape])
     layers = {
         "zones": geopandas.GeoDataFrame(
             [attributes(record, shape) for shape in zones],
-            geometry=[shapely.multipolygons(shape.parts) for shape in zones],
+            geometry=[shape.whole for shape in zones],
             crs=WGS84,
         ),
         "samples": geopandas.GeoDataFrame(
