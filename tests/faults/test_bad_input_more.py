@@ -139,7 +139,7 @@ TABLES = [
     ("a sentinel", table_text(column(3, lambda n, v: "-9999" if n == 2 else v)), {}, "IN-IMPOSSIBLE", 3, "-9999"),
     ("another sentinel", table_text(column(5, lambda n, v: "999" if n == 2 else v)), {}, "IN-IMPOSSIBLE", 3, "999"),
     ("acid beyond acids", with_column("pH", lambda n: "62"), {}, "IN-CONSTANT", 0, "pH"),
-    ("a row of means", table_text() + "Mean,,,0.5,2,20\n", {}, "IN-NO-PLACE", 3, "coordinate"),
+    ("a row of means", table_text() + "Mean,,,0.5,2,20\n", {}, "IN-FOOTER", 0, "Mean"),
 ]  # fmt: skip
 
 

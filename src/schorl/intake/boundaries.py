@@ -19,6 +19,7 @@ from schorl.model.record import Recognition
 
 SMALLEST_HA, LARGEST_HA = 0.02, 20_000.0
 SLIVER_M2 = 1.0
+FAR_PARTS_M = 1000.0
 REPAIR_CHANGES = 0.005  # a repair that moves more of the area than this is asked about
 
 
@@ -29,11 +30,11 @@ def read_boundary(
     try:
         features = read_features(path, layer=layer, crs=crs, option="boundary")
         polygons = _polygons(path, features)
-        boundary, found = _repaired(path, polygons)
+        boundary, found = _repaired(path, polygons, features.crs)
         field = _field(path, boundary, features, name=name)
     except Unreadable as problem:
         return Reading(value=None, findings=(problem.found,))
-    found += _size_findings(path, field)
+    found += [*_size_findings(path, field), *_far_parts(path, field)]
     how = f"{field.area_ha:.2f} ha, {features.crs_said}; worked in {_named(field)}"
     recognised = (Recognition(what="boundary", where=path.name, how=how),)
     stopped = any(one.code == "IN-NESTED" for one in found)
@@ -64,7 +65,7 @@ def _polygons(path: Path, features: Features) -> list[Polygon]:
     return parts
 
 
-def _repaired(path: Path, parts: list[Polygon]) -> tuple[Area, list[Finding]]:
+def _repaired(path: Path, parts: list[Polygon], crs: str) -> tuple[Area, list[Finding]]:
     """One valid area; what had to be mended is said with the area before and after."""
     found: list[Finding] = []
     mended = []
@@ -79,7 +80,8 @@ def _repaired(path: Path, parts: list[Polygon]) -> tuple[Area, list[Finding]]:
         what = f"polygon {place} crosses itself or touches itself ({reason.split('[')[0].strip()})"
         if change > REPAIR_CHANGES or after == 0:
             raise refuse("IN-INVALID", path, f"{what}; mending it would change its area much")
-        found.append(finding("IN-MENDED", where=path.name, what=f"{what}; it was mended"))
+        what += f"; mended, {area_ha(part, crs=crs):.3f} ha before, {area_ha(repaired, crs=crs):.3f} after"
+        found.append(finding("IN-MENDED", where=path.name, what=what))
         mended.append(repaired)
     found += _inside_others(path, mended)
     return _areas_only(shapely.union_all(mended)), found
@@ -146,6 +148,23 @@ def _size_findings(path: Path, field: Field) -> list[Finding]:
         what = f"the boundary encloses {field.area_ha:,.0f} ha"
         return [finding("IN-LARGE", where=path.name, what=what)]
     return []
+
+
+def _far_parts(path: Path, field: Field) -> list[Finding]:
+    """Parts of one field that lie far from all others may be another field."""
+    parts = list(shapely.get_parts(field.boundary))
+    gaps = [
+        min(shapely.distance(one, other) for other in parts if other is not one) for one in parts
+    ] if len(parts) > 1 else [0.0]  # fmt: skip
+    far = [(gap, one) for gap, one in zip(gaps, parts, strict=True) if gap > FAR_PARTS_M]
+    if not far:
+        return []
+    gap, one = max(far, key=lambda pair: pair[0])
+    what = (
+        f"a part of {area_ha(one, crs=field.crs):.2f} ha lies {gap / 1000:.1f} km from the nearest "
+        f"other of {len(parts)} parts"
+    )
+    return [finding("IN-FAR-PARTS", where=path.name, what=what)]
 
 
 def read_areas(

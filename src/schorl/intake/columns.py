@@ -159,20 +159,20 @@ def pivoted(table: Table, draft: Draft) -> Table:
     if "analyte" not in found or "result" not in found or "sample" not in found:
         return table
     sample, analyte, result = found["sample"], found["analyte"], found["result"]
-    unit = found.get("unit")
+    unit, depth = found.get("unit"), found.get("depth")
     names: list[str] = []
-    merged: dict[str, dict[str, str]] = {}
-    lines: dict[str, int] = {}
+    merged: dict[tuple[str, str], dict[str, str]] = {}
+    lines: dict[tuple[str, str], int] = {}
     own = [p for p in range(len(table.headers)) if p not in (analyte, result, unit)]
-    kept: dict[str, tuple[str, ...]] = {}
+    kept: dict[tuple[str, str], tuple[str, ...]] = {}
     for row, line in zip(table.rows, table.lines, strict=True):
         header = row[analyte] + (f" ({row[unit]})" if unit is not None and row[unit] else "")
         if header not in names:
             names.append(header)
-        key = row[sample]
+        key = (row[sample], plain_words(row[depth]) if depth is not None else "")
         if header in merged.get(key, {}):
             draft.note(
-                "IN-SAME-NAME", f"sample `{key}` has two results for {row[analyte]}",
+                "IN-SAME-NAME", f"sample `{key[0]}` has two results for {row[analyte]}",
                 where=f"line {line}",
             )  # fmt: skip
         merged.setdefault(key, {})[header] = row[result]

@@ -10,9 +10,18 @@ from pathlib import Path
 
 from schorl.intake.guards import Unreadable, checked_bytes, refuse, refuse_xml_tricks, unpacked
 from schorl.intake.headers import recognise
-from schorl.intake.quantities import unit_named
+from schorl.intake.quantities import plain_words, unit_named
 
 TABLE_SUFFIXES = {".csv", ".txt", ".tsv", ".xlsx"}
+#: First words of rows that sum up the samples above them.
+SUMMARIES = frozenset(
+    {
+        "mean", "average", "avg", "total", "totals", "sum", "min", "minimum", "max", "maximum",
+        "median", "sd", "std", "stdev", "cv", "count", "mittelwert", "mittel", "durchschnitt",
+        "summe", "gesamt", "moyenne", "somme", "media", "promedio", "suma", "somma", "gemiddelde",
+        "totaal", "medel", "summa", "srednia",
+    }
+)  # fmt: skip
 MOST_ROWS = 60_000
 MOST_CELLS = 3_000_000  # of the rectangle that a sheet's filled cells span
 
@@ -28,6 +37,7 @@ class Table:
     lines: tuple[int, ...]
     decimal_comma: bool
     how: str
+    footer: tuple[tuple[int, str], ...] = ()  # lines under the samples that are none, left out
 
 
 def read_table(path: Path, *, layer: str | None) -> Table:
@@ -68,8 +78,18 @@ def _decoded(path: Path, data: bytes) -> tuple[str, str]:
     except UnicodeDecodeError:
         pass
     if b"\0" in data:
-        raise refuse("IN-ENCODING", path, "binary content where text is expected")
+        what = "binary content where text is expected"
+        if _wide_letters(data):
+            what = "the text is UTF-16 without its byte order mark, so its letters cannot be told"
+        raise refuse("IN-ENCODING", path, what)
     return data.decode("cp1252", errors="replace"), "latin-1"
+
+
+def _wide_letters(data: bytes) -> bool:
+    """Whether every other byte of the first lines is nought, as in plain letters of two bytes."""
+    start = data[:2000]
+    halves = [start[0::2].count(0), start[1::2].count(0)]
+    return max(halves) > 0.8 * (len(start) // 2) and min(halves) == 0
 
 
 def _split(path: Path, text: str, delimiter: str) -> list[list[str]]:
@@ -178,6 +198,7 @@ def _with_header(
         units = _fitted(body[0][1], len(headers))
         body = body[1:]
     kept = [(line, row) for line, row in body if any(cell.strip() for cell in row)]
+    kept, footer = _without_footer(kept, len(headers))
     if not aligned:
         _refuse_ragged(path, kept, headers)
     return Table(
@@ -188,7 +209,28 @@ def _with_header(
         lines=tuple(line for line, _ in kept),
         decimal_comma=comma,
         how=how,
+        footer=footer,
     )
+
+
+def _without_footer(
+    body: list[tuple[int, list[str]]], width: int
+) -> tuple[list[tuple[int, list[str]]], tuple[tuple[int, str], ...]]:
+    """Rows without the sums, means and remarks that stand under them."""
+    end = len(body)
+    while end and _is_footer(body[end - 1][1], width):
+        end -= 1
+    # A table of remarks only is no table: better say what is missing in its rows.
+    end = end or len(body)
+    said = [(line, next(cell.strip() for cell in row if cell.strip())) for line, row in body[end:]]
+    return body[:end], tuple(said)
+
+
+def _is_footer(row: list[str], width: int) -> bool:
+    filled = [cell.strip() for cell in row if cell.strip()]
+    summary = re.split(r"[\s:.=(]", plain_words(filled[0]))[0] in SUMMARIES
+    lone = len(filled) == 1 and width > 2 and not filled[0].replace(".", "").isdigit()
+    return summary or lone
 
 
 def _refuse_ragged(path: Path, body: list[tuple[int, list[str]]], headers: list[str]) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from typing import Any
 
@@ -16,6 +17,11 @@ from schorl.intake.quantities import plain_words, read_cell
 from schorl.intake.vectors import Features, read_features
 from schorl.model.field import Area, Field
 from schorl.model.reading import SampleHints
+
+DECIMAL_DEGREES = (
+    "degrees with minutes and seconds are not read: write decimal degrees, 52.0533 for 52°03'12\"N, "
+    "west and south negative"
+)
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -181,9 +187,11 @@ def _from_columns(
         for axis, column in enumerate(columns):
             cell = read_cell(table.rows[row][column], decimal_comma=table.decimal_comma)
             if cell.value is None:
+                text = table.rows[row][column]
                 draft.note(
                     "IN-NO-PLACE",
-                    f"`{table.rows[row][column]}` is no coordinate",
+                    f"`{text}` is no coordinate",
+                    DECIMAL_DEGREES if re.search(r"\d\D+\d+\D+\d|°", text) else "",
                     where=f"line {table.lines[row]}, sample {ids[place]}",
                 )
                 continue
@@ -212,6 +220,16 @@ def _from_columns(
 
 
 def _outside_degrees(points: np.ndarray, system: str) -> bool:
-    if system != WGS84:
+    if not _in_degrees(system):
         return False
     return bool((np.abs(points[:, 0]) > 180).any() or (np.abs(points[:, 1]) > 90).any())
+
+
+def _in_degrees(system: str) -> bool:
+    from pyproj import CRS
+    from pyproj.exceptions import CRSError
+
+    try:
+        return bool(CRS.from_user_input(system).is_geographic)
+    except CRSError:
+        return False  # said by who asks for it

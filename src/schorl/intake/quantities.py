@@ -68,6 +68,32 @@ def _number(text: str, *, decimal_comma: bool) -> float | None:
     return value if abs(value) < 1e12 else None
 
 
+#: A figure whose single comma or point may part thousands as well as decimals: 1,234 or 1.234.
+EITHER_WAY = re.compile(r"[+-]?[1-9]\d{0,2}([.,])\d{3}")
+
+
+def marks_of(text: str) -> tuple[str, str]:
+    """Which marks of a figure surely part decimals, and which surely thousands ("" where none)."""
+    figure = re.match(r"(?:<=|≤|<)?\s*([+-]?[\d.,]*\d)", text.replace("\u2212", "-").strip())
+    if figure is None or EITHER_WAY.fullmatch(figure[1]):
+        return "", ""
+    commas, points = figure[1].count(","), figure[1].count(".")
+    if commas and points:
+        decimal = max(",.", key=figure[1].rfind)
+        return decimal, ",."[decimal == ","]
+    mark = "," if commas else "."
+    if commas + points == 1:
+        return mark, ""
+    return "", mark if commas + points else ""
+
+
+def either_way(text: str) -> str:
+    """The mark of a figure such as 1,234 that may be read two ways; "" of all others."""
+    figure = re.match(r"(?:<=|≤|<)?\s*([+-]?[\d.,]*\d)", text.replace("\u2212", "-").strip())
+    found = EITHER_WAY.fullmatch(figure[1]) if figure else None
+    return found[1] if found else ""
+
+
 def plain_words(text: str) -> str:
     """Lower case, without accents, separators as single spaces; units and signs kept."""
     text = text.replace("µ", "u").replace("μ", "u").replace("³", "3").replace("²", "2")

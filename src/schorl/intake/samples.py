@@ -52,6 +52,8 @@ def _read(path: Path, field: Field, hints: SampleHints, draft: Draft) -> SampleS
     if path.suffix.lower() in TABLE_SUFFIXES:
         table = read_table(path, layer=hints.layer)
         draft.saw("table", "file", f"{len(table.rows)} rows ({table.how})")
+        for line, said in table.footer:
+            draft.note("IN-FOOTER", f"`{said}` under the table is no sample", where=f"line {line}")
     else:
         features = read_features(path, layer=hints.layer, crs=hints.crs, option="samples")
         table = _as_table(path, features)

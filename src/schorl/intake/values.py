@@ -15,6 +15,8 @@ from schorl.intake.quantities import (
     MATTER_PER_CARBON,
     SLICE_CM,
     Cell,
+    either_way,
+    marks_of,
     read_cell,
     unit_named,
 )
@@ -42,6 +44,8 @@ def measured_values(
     draft: Draft,
 ) -> Read | None:
     """Read and convert a column; None with findings where that cannot be done safely."""
+    if _thousands_or_decimals(table, column, draft):
+        return None
     cells = [
         read_cell(table.rows[row][column.place], decimal_comma=table.decimal_comma) for row in rows
     ]
@@ -71,6 +75,37 @@ def measured_values(
         unit=unit,
         per_volume=unit == "mg/L soil",
     )
+
+
+def _thousands_or_decimals(table: Table, column: Column, draft: Draft) -> bool:
+    """Ask about figures such as 1,234 where neither column nor table tells what their mark parts.
+
+    A mark that parts decimals elsewhere in the column, or alone in the table, parts them here too.
+    """
+    cells = [row[column.place] for row in table.rows]
+    doubtful = [
+        (cell, line) for cell, line in zip(cells, table.lines, strict=True) if either_way(cell)
+    ]
+    if not doubtful:
+        return False
+    own = {mark for cell in cells for mark in marks_of(cell)[:1]} - {""}
+    parting = {mark for cell in cells for mark in marks_of(cell)[1:]} - {""}
+    everywhere = {mark for row in table.rows for cell in row for mark in marks_of(cell)[:1]} - {""}
+    marks = {either_way(cell) for cell, _ in doubtful}
+    english = marks == {"."} and not (own | everywhere) - {"."}
+    told = own == marks and not parting
+    alone = not own and everywhere == marks and not parting
+    if told or alone or english or (marks == {"."} and table.how == "spreadsheet"):
+        return False
+    cell, line = doubtful[0]
+    bare = cell.replace(",", "").replace(".", "")
+    as_decimal = cell.replace(",", ".")
+    draft.note(
+        "IN-THOUSANDS",
+        f"`{cell}` in `{column.header}` may be {bare} or {as_decimal}",
+        where=f"line {line}",
+    )
+    return True
 
 
 def _unit_of(

@@ -182,7 +182,7 @@ def _system(path: Path, given: str | None, declared: str | None, option: str) ->
             CRS.from_user_input(given)
         except CRSError:
             raise refuse("IN-CRS", path, f"`{given}` is not a coordinate system") from None
-        if declared and not CRS.from_user_input(given).equals(CRS.from_user_input(declared)):
+        if declared and not same_system(given, declared):
             raise refuse(
                 "IN-CRS-CLASH",
                 path,
@@ -197,6 +197,17 @@ def _system(path: Path, given: str | None, declared: str | None, option: str) ->
             f"give it with `--{option}-crs EPSG:...`",
         )
     return declared, f"{_short(declared)}, as the file declares"
+
+
+def same_system(one: str, other: str) -> bool:
+    """Whether two names mean one coordinate system, however they order its axes.
+
+    Coordinates are read as east, north whatever the system's own order: OGC:CRS84 and EPSG:4326
+    are the same here.
+    """
+    from pyproj import CRS
+
+    return CRS.from_user_input(one).equals(CRS.from_user_input(other), ignore_axis_order=True)
 
 
 def _short(system: str) -> str:
