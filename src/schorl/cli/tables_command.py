@@ -42,7 +42,7 @@ LABELS = {
 }  # fmt: skip
 #: What goes without saying.
 UNTOLD = {
-    ("organic", "no"), ("clay_from_pct", "0"), ("clay_below_pct", "101"), ("perennial", "no"),
+    ("crops", "all"), ("organic", "no"), ("clay_from_pct", "0"), ("clay_below_pct", "101"), ("perennial", "no"),
 }  # fmt: skip
 Tables = Mapping[str, Sequence[Mapping[str, str]]]
 
@@ -124,13 +124,15 @@ def _row_text(row: Mapping[str, str]) -> str:
     figures = [
         f"{LABELS.get(key, key.replace('_', ' '))} {value}"
         for key, value in row.items()
-        if value and key not in (*COMMON, *SENTENCES) and (key, value) not in UNTOLD
+        if value and key not in (*COMMON, *SENTENCES, "value") and (key, value) not in UNTOLD
     ]
     unit = "" if row["unit"] == "-" else f" [{row['unit']}]"
+    if "value" in row:
+        figures, unit = [f"{row['value']} {row['unit']}", *figures], ""
     said = f"{row['id']}: {'; '.join(figures)}" if figures else row["id"]
     lines = _wrapped(said + unit, "", "    ")
     for key, label in SENTENCES.items():
-        if row.get(key):
+        if row.get(key) and (key, row[key]) not in UNTOLD:
             lines += _wrapped(label + row[key].replace("|", ", "), "    ")
     if row["source"].startswith(row["status"]):
         lines += _wrapped(row["source"], "    ")

@@ -15,7 +15,7 @@ from schorl.machinery.mixes import mix_density_kg_l
 from schorl.machinery.nozzles import nozzle_colour, nozzle_size
 from schorl.machinery.rates import boron_per_unit, machine_rate, rate_band
 from schorl.machinery.saying import Saying
-from schorl.machinery.solids import most_boron_g_l
+from schorl.machinery.solids import most_boron_g_l, saturation_rows, water_temperature_c
 from schorl.machinery.sprayer import settled_machine
 from schorl.machinery.spreader import calibration_run_s, spreader_figures
 from schorl.machinery.tables import machine_limit, trace
@@ -217,5 +217,7 @@ def _sources(spread: Spread) -> tuple[Mapping[str, str], ...]:
     if spread.sprayed and spread.machine.nozzle_size:
         rows.append(trace("nozzles", nozzle_size(spread.machine.nozzle_size)))
     if spread.solid is not None:
+        celsius = water_temperature_c(spread.machine.water_temperature_c)
+        rows += [trace("solubility", name) for name in saturation_rows(spread.solid, celsius)]
         rows += [trace("solids", spread.solid.name), trace("machine_limits", "solubility-margin")]
     return tuple(rows)

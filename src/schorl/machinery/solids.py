@@ -59,17 +59,26 @@ def _grams_l(share_w_w: float, solid: Solid) -> float:
 
 
 @lru_cache(maxsize=16)
-def _nodes(solid: Solid) -> tuple[tuple[float, float], ...]:
-    """Temperature in °C and saturation in g/L, the lower of conflicting figures."""
-    lowest: dict[float, float] = {}
-    for row in table("solubility").values():
+def _nodes(solid: Solid) -> tuple[tuple[float, float, str], ...]:
+    """Temperature in °C, saturation in g/L and its row, the lower of conflicting figures."""
+    lowest: dict[float, tuple[float, str]] = {}
+    for name, row in table("solubility").items():
         if row["compound"] != solid.name:
             continue
         value = float(row["value"])
         grams = value if row["unit"] == PER_LITRE else _grams_l(value / 100.0, solid)
         celsius = float(row["temperature_c"])
-        lowest[celsius] = min(grams, lowest.get(celsius, math.inf))
-    return tuple(sorted(lowest.items()))
+        lowest[celsius] = min((grams, name), lowest.get(celsius, (math.inf, "")))
+    return tuple((celsius, *lowest[celsius]) for celsius in sorted(lowest))
+
+
+def saturation_rows(solid: Solid, temperature_c: float) -> tuple[str, ...]:
+    """Ids of the rows of solubility that a temperature's figure is drawn between."""
+    nodes = _nodes(solid)
+    celsius = min(max(temperature_c, nodes[0][0]), nodes[-1][0])
+    below = max(node for node in nodes if node[0] <= celsius)
+    above = min(node for node in nodes if node[0] >= celsius)
+    return tuple(dict.fromkeys((below[2], above[2])))
 
 
 def saturation_g_l(solid: Solid, temperature_c: float) -> float:
@@ -80,7 +89,7 @@ def saturation_g_l(solid: Solid, temperature_c: float) -> float:
     """
     nodes = _nodes(solid)
     celsius = min(max(temperature_c, nodes[0][0]), nodes[-1][0])
-    for (low, below), (high, above) in itertools.pairwise(nodes):
+    for (low, below, _), (high, above, _) in itertools.pairwise(nodes):
         if celsius <= high:
             part = (celsius - low) / (high - low)
             return math.exp((1.0 - part) * math.log(below) + part * math.log(above))
