@@ -37,7 +37,7 @@ SHORTLY: Mapping[Limit, str] = {
     Limit.LEAST_WORTH: "too little to give",
 }
 
-PROPERTY = {"boron": "Boron", "organic_matter": "Organic matter", "clay": "Clay"}
+PROPERTY = {"boron": "Boron", "organic_matter": "Organic matter", "clay": "Clay", "ph": "pH"}
 
 
 def shown_of(record: RunRecord) -> Shown:

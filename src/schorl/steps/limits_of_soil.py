@@ -103,7 +103,7 @@ def target_for(
     if kind is Interpretation.OWN or chosen.target_mg_kg is not None:
         return _own(crop, chosen, clay_pct)
     if kind is Interpretation.TEXTURE_LINE:
-        return texture_line_target(clay_pct), _rows("targets", "group", "texture line")
+        return texture_line_target(clay_pct), _line_rows("targets", "texture line", clay_pct)
     if kind is Interpretation.CLASS_TABLE:
         rows = _class_rows(chosen)
         organic = organic_matter_pct > limit("organic-from")
@@ -112,7 +112,7 @@ def target_for(
         return target, [
             trace("class_limits", row["id"], float(row["adequate_from"])) for row in used
         ]
-    return crop_need_target(crop.need, clay_pct), _rows("targets", "group", crop.need)
+    return crop_need_target(crop.need, clay_pct), _line_rows("targets", crop.need, clay_pct)
 
 
 def _own(crop: Crop, chosen: CropSettings, clay_pct: Floats) -> tuple[Floats, Sources]:
@@ -140,12 +140,34 @@ def _said(what: str, chosen: CropSettings) -> Mapping[str, str]:
     }
 
 
-def _rows(name: str, column: str, wanted: str) -> Sources:
+def _line_rows(name: str, group: str, clay_pct: Floats) -> Sources:
+    """Rows of a line over clay that the soils' figures are drawn between."""
+    rows = [row for row in table(name) if row["group"] == group]
+    clays = [-np.inf, *(float(row["clay_pct"]) for row in rows), np.inf]
+    column = {"targets": "target_mg_kg", "ceilings": "ceiling_mg_kg"}[name]
     return [
-        trace(name, row["id"], float(row["target_mg_kg"]))
-        for row in table(name)
-        if row[column] == wanted
+        trace(name, row["id"], float(row[column]))
+        for row, low, high in zip(rows, clays, clays[2:], strict=False)
+        if ((clay_pct > low) & (clay_pct < high)).any()
     ]
+
+
+def _ceiling_rows(
+    own: Floats, classes: set[str], clay_pct: Floats, organic_matter_pct: Floats
+) -> Sources:
+    """Rows of ceilings that some soil of the field is held by."""
+    held = [row for row in table("ceilings") if row["group"] in classes - {"texture"}]
+    least = min((float(row["ceiling_mg_kg"]) for row in held), default=np.inf)
+    sources: Sources = [
+        trace("ceilings", row["id"], least) for row in held if float(row["ceiling_mg_kg"]) == least
+    ]
+    free = own < least - 1e-9
+    organic = organic_matter_pct > limit("organic-from")
+    if (free & organic).any():
+        sources += [trace("ceilings", "organic", float(own[free & organic][0]))]
+    if (free & ~organic).any():
+        sources += _line_rows("ceilings", "texture", clay_pct[free & ~organic])
+    return sources
 
 
 def ceiling_for(
@@ -168,13 +190,9 @@ def ceiling_for(
         assert given is not None  # refused before
         return np.full(np.shape(clay_pct), given), [_said("ceiling", settings.crop)]
     own = soil_ceiling(crop, _next_class(settings), clay_pct, organic_matter_pct)
-    sources: Sources = [
-        trace("ceilings", row["id"], float(row["ceiling_mg_kg"]))
-        for row in table("ceilings")
-        if row["group"] in {crop.ceiling_class, _next_class(settings)}
-    ]
     if given is None:
-        return own, sources
+        classes = {crop.ceiling_class, _next_class(settings)}
+        return own, _ceiling_rows(own, classes, clay_pct, organic_matter_pct)
     named = any(one.what == "soil ceiling" and one.person.strip() for one in settings.overrides)
     if given > own.min() + 1e-9 and not named:
         what = f"the given ceiling {given:g} mg/kg is above the built-in {own.min():g}"

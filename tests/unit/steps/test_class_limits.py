@@ -129,3 +129,35 @@ def test_the_cap_says_that_it_is_a_proposal():
     assert "proposal" in said
     assert "crops: sugar beet 2.24" in said
     assert len(table("class_limits")) > 30
+
+
+def keys(found, name):
+    return [row["row"] for row in found.sources if row["table"] == name]
+
+
+def by_need(crop, next_crop, *, clay=None):
+    surfaces = dict(RECORD.surfaces)
+    if clay is not None:
+        held = np.full(len(surfaces["clay"].estimate), float(clay))
+        surfaces["clay"] = replace(surfaces["clay"], estimate=held)
+    chosen = CropSettings(crop=crop, next_crop=next_crop)
+    return assess_cells(
+        RECORD.samples, surfaces, RECORD.grid, replace(RECORD.settings, crop=chosen)
+    )
+
+
+def test_only_rows_that_hold_some_soil_are_named():
+    # Clay runs from 12 to 30 %: the line of high need is drawn between both its ends.
+    assert keys(by_need("sugar beet", "sugar beet"), "targets") == ["high-1", "high-2"]
+    assert keys(by_need("tomato", "sugar beet"), "targets") == ["medium-2", "medium-3"]
+    assert keys(by_need("sugar beet", "sugar beet"), "ceilings") == [
+        "texture-1",
+        "texture-2",
+        "texture-3",
+    ]
+    assert keys(by_need("sugar beet", "sugar beet", clay=50), "ceilings") == ["texture-4"]
+    assert keys(by_need("sugar beet", "sugar beet", clay=5), "ceilings") == ["texture-1"]
+    # A sensitive next crop holds every soil to 2.0, so that no texture row rules.
+    assert keys(by_need("sugar beet", "maize"), "ceilings") == ["sensitive"]
+    assert keys(by_need("sugar beet", ""), "ceilings") == ["sensitive"]
+    assert keys(by_need("sunflower", "dry bean"), "ceilings") == ["very-sensitive"]
