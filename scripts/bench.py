@@ -3,6 +3,7 @@
 python scripts/bench.py              the whole job on the 50 ha sample field
 python scripts/bench.py geostat      kriging beside PyKrige and GSTools
 python scripts/bench.py zones        drawing zones
+python scripts/bench.py formats      writing all formats, verifying large files
 """
 
 from __future__ import annotations
@@ -13,7 +14,7 @@ from pathlib import Path
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-PARTS = ("job", "geostat", "zones")
+PARTS = ("job", "geostat", "zones", "formats")
 
 
 def main(arguments: list[str]) -> int:
