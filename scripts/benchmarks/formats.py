@@ -58,7 +58,9 @@ def squares(count: int) -> np.ndarray:
     across = int(np.ceil(np.sqrt(count)))
     row, col = np.divmod(np.arange(count), across)
     west, south = WEST + col * SIDE, SOUTH + row * SIDE
-    return shapely.box(west.round(7), south.round(7), (west + SIDE).round(7), (south + SIDE).round(7))
+    return shapely.box(
+        west.round(7), south.round(7), (west + SIDE).round(7), (south + SIDE).round(7)
+    )
 
 
 def geojson(folder: Path, count: int) -> Path:

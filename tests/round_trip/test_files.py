@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import json
+import os
 import shutil
 import sqlite3
 import subprocess
+import sys
+import tempfile
 from pathlib import Path
 from xml.etree import ElementTree
 
@@ -295,3 +298,29 @@ def test_overviews_invent_no_rate(pack, record):
     with rasterio.open(pack / "surfaces" / "rate.tif") as source:
         small = source.read(1, out_shape=(source.height // 4, source.width // 4), masked=True)
     assert {round(float(v), 4) for v in np.unique(small.compressed())} <= given
+
+
+GDAL_UTILS = Path(
+    os.environ.get("SCHORL_GDAL_UTILS") or Path(tempfile.gettempdir()) / "schorl-gdal-utils"
+)
+
+
+def test_the_geopackage_validator_of_gdal_finds_no_fault(pack, tmp_path):
+    """osgeo_utils.samples.validate_gpkg of gdal-utils, installed apart without its dependencies."""
+    if not (GDAL_UTILS / "osgeo_utils").is_dir():
+        pytest.skip(f"gdal-utils is not at {GDAL_UTILS}; pip install --no-deps --target there")
+    validate = [sys.executable, "-m", "osgeo_utils.samples.validate_gpkg"]
+    settings = {**os.environ, "PYTHONPATH": str(GDAL_UTILS)}
+
+    def faults(path):
+        done = subprocess.run(
+            [*validate, path], env=settings, capture_output=True, text=True, check=False
+        )
+        return done.returncode, done.stdout + done.stderr
+
+    assert faults(pack / "prescription.gpkg")[0] == 0, faults(pack / "prescription.gpkg")
+    broken = tmp_path / "broken.gpkg"
+    broken.write_bytes((pack / "prescription.gpkg").read_bytes())
+    with sqlite3.connect(broken) as package:
+        package.execute("delete from gpkg_geometry_columns where table_name = 'zones'")
+    assert faults(broken)[0] != 0  # it does look
