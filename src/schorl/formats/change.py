@@ -12,7 +12,7 @@ from typing import Any
 import numpy as np
 import shapely
 
-from schorl.formats.pack import write_json
+from schorl.formats.pack import sealed, write_json
 from schorl.formats.rasters import NODATA
 from schorl.formats.vectors import quoted, write_layers
 from schorl.formats.whole_folder import Rows, listed, put_folder, sha256_of
@@ -65,7 +65,7 @@ def write_change(
             "packs": [change.before.identity, change.after.identity],
             "versions": dict(versions),
         }
-        write_json(beside / "manifest.json", manifest)
+        write_json(beside / "manifest.json", sealed(manifest))
         data = (beside / "manifest.json").read_bytes()
         return (*files, ("manifest.json", len(data), sha256_of(data)))
 

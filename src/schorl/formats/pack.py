@@ -85,7 +85,7 @@ def write_pack(
     def fill(beside: Path) -> Rows:
         _write_files(record, beside, extras)
         files = listed(beside)
-        write_json(beside / "manifest.json", _manifest(record, files))
+        write_json(beside / "manifest.json", sealed(_manifest(record, files)))
         _read_back(beside)
         data = (beside / "manifest.json").read_bytes()
         return (*files, ("manifest.json", len(data), sha256_of(data)))
@@ -134,10 +134,25 @@ def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -
     write_json(folder / "summary.json", summary(record))
 
 
-def write_json(path: Path, document: Mapping[str, Any]) -> None:
-    """Write a JSON document with sorted keys and nothing JSON does not know."""
+SEAL = "sha256_of_the_rest"
+
+
+def sealed(document: Mapping[str, Any]) -> dict[str, Any]:
+    """A manifest with a checksum of its own, since nothing else vouches for it."""
+    rest = {key: value for key, value in document.items() if key != SEAL}
+    text = json.dumps(rest, sort_keys=True, allow_nan=False, ensure_ascii=False)
+    return rest | {SEAL: sha256_of(text.encode("utf-8"))}
+
+
+def json_bytes(document: Mapping[str, Any]) -> bytes:
+    """A JSON document with sorted keys and nothing JSON does not know."""
     text = json.dumps(document, indent=1, sort_keys=True, allow_nan=False, ensure_ascii=False)
-    path.write_bytes((text + "\n").encode("utf-8"))
+    return (text + "\n").encode("utf-8")
+
+
+def write_json(path: Path, document: Mapping[str, Any]) -> None:
+    """Write a JSON document."""
+    path.write_bytes(json_bytes(document))
 
 
 def _manifest(record: RunRecord, files: Sequence[tuple[str, int, str]]) -> dict[str, Any]:

@@ -81,7 +81,13 @@ def _verify_pack(folder: Path, outline: Any) -> tuple[list[Fault], dict[str, Any
     faults, manifest, summary = _records(folder)
     if manifest is None or summary is None:
         return faults, summary
+    if not _sealed(folder, manifest):
+        return [
+            Fault(file="manifest.json", place="seal", what="was changed after writing")
+        ], summary
     faults += _manifest_faults(folder, manifest)
+    if any(fault.file == "summary.json" for fault in faults):
+        return faults, summary  # what was recorded is not known
     held = outline
     package = folder / "prescription.gpkg"
     if held is None and package.exists():
@@ -117,6 +123,16 @@ def _records(folder: Path) -> tuple[list[Fault], dict[str, Any] | None, dict[str
             faults.append(Fault(file=name, place="file", what=f"cannot be read: {reason}"))
             read.append(None)
     return faults, read[0], read[1]
+
+
+def _sealed(folder: Path, manifest: dict[str, Any]) -> bool:
+    """Whether a manifest is the one that was written, to the byte."""
+    from schorl.formats.pack import json_bytes, sealed
+
+    try:
+        return json_bytes(sealed(manifest)) == (folder / "manifest.json").read_bytes()
+    except ValueError:  # numbers that JSON does not know
+        return False
 
 
 def _manifest_faults(folder: Path, manifest: dict[str, Any]) -> list[Fault]:
