@@ -73,25 +73,32 @@ EITHER_WAY = re.compile(r"[+-]?[1-9]\d{0,2}([.,])\d{3}")
 
 
 def marks_of(text: str) -> tuple[str, str]:
-    """Which marks of a figure surely part decimals, and which surely thousands ("" where none)."""
-    figure = re.match(r"(?:<=|≤|<)?\s*([+-]?[\d.,]*\d)", text.replace("\u2212", "-").strip())
-    if figure is None or EITHER_WAY.fullmatch(figure[1]):
+    """Which mark of a figure surely parts decimals, and which surely thousands ("" where none)."""
+    figure = _figure(text)
+    commas, points = figure.count(","), figure.count(".")
+    if EITHER_WAY.fullmatch(figure) or not commas + points:
         return "", ""
-    commas, points = figure[1].count(","), figure[1].count(".")
     if commas and points:
-        decimal = max(",.", key=figure[1].rfind)
+        decimal = max(",.", key=figure.rfind)
         return decimal, ",."[decimal == ","]
     mark = "," if commas else "."
-    if commas + points == 1:
-        return mark, ""
-    return "", mark if commas + points else ""
+    return (mark, "") if commas + points == 1 else ("", mark)
 
 
 def either_way(text: str) -> str:
     """The mark of a figure such as 1,234 that may be read two ways; "" of all others."""
-    figure = re.match(r"(?:<=|≤|<)?\s*([+-]?[\d.,]*\d)", text.replace("\u2212", "-").strip())
-    found = EITHER_WAY.fullmatch(figure[1]) if figure else None
+    found = EITHER_WAY.fullmatch(_figure(text))
     return found[1] if found else ""
+
+
+def _figure(text: str) -> str:
+    """The figure of a cell that holds one, without its sign of a limit and its unit; else ""."""
+    plain = text.replace("\u2212", "-").strip()
+    found = re.match(r"(?:<=|≤|<)?\s*([+-]?[\d.,]*\d)", plain)
+    if found is None:
+        return ""
+    rest = plain[found.end() :].strip()
+    return found[1] if not rest or unit_named(rest) else ""
 
 
 def plain_words(text: str) -> str:

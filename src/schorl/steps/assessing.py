@@ -19,7 +19,8 @@ from schorl.agronomy.soil_mass import (
     kg_ha_per_mg_kg,
     need_depth_cm,
 )
-from schorl.agronomy.tables import limit, row_of, trace
+from schorl.agronomy.tables import limit, trace
+from schorl.agronomy.textures import texture_named
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.model.arrays import Flags, Floats
@@ -91,8 +92,8 @@ def assess_cells(
     )
     at_samples = _need_at_samples(samples, grid, need)
     cap = rate_cap(crop, settings.placement, settings.overrides)
-    capped = trace(cap.table, cap.row, cap.kg_ha)
-    found.extend(_status_notes([*sources, *more, capped]))
+    more = [*more, *_texture_used(samples, settings), trace(cap.table, cap.row, cap.kg_ha)]
+    found.extend(_status_notes([*sources, *more]))
     if crop.perennial:
         what = f"{crop.name}: only the yearly cap is given here"
         found.append(finding("RATE-PERENNIAL", where="crop", what=what))
@@ -101,7 +102,7 @@ def assess_cells(
         sample_need_kg_ha=at_samples,
         crop=crop,
         findings=tuple(found),
-        sources=(*sources, *more, capped),
+        sources=(*sources, *more),
     )
 
 
@@ -181,8 +182,18 @@ def _cells_of(surfaces: Mapping[str, Surface], name: str, cells: int, *, default
 
 
 def _texture_figure(texture: str, column: str) -> float:
-    """Middle of a named texture class; a loam's where none is named and none is needed."""
-    return float(row_of("textures", texture.lower() or "loam")[column])
+    """A figure of a named texture class; a loam's where none is named and none is needed."""
+    return float(texture_named(texture)[column])
+
+
+def _texture_used(samples: SampleSet, settings: RunSettings) -> list[Mapping[str, str]]:
+    """The row of a declared texture class, where clay or sand was taken from it."""
+    declared = settings.crop.texture
+    measured = {*samples.properties, *samples.constants}
+    if not declared or {"clay", "sand"} <= measured:
+        return []
+    row = texture_named(declared)
+    return [trace("textures", row["id"], float(row["clay_pct"]))]
 
 
 def _refuse_peat(organic_pct: Floats) -> None:

@@ -57,10 +57,14 @@ def _names(samples: SampleSet, settings: RunSettings) -> Iterator[str]:
         yield "need-depth-most"
     if crop.incorporation_cm is None:
         yield "ceiling-depth"
+    if crop.bulk_density_g_cm3 is None and not samples.campaign.per_volume:
+        yield from ("organic-from", "density-om-least", "density-om-most", "density-least")
+        yield "density-most"
     if any(one.what == "alfalfa season limit" for one in settings.overrides):
         yield "absolute-alfalfa"
     if crop.drainage_mm is not None:
         yield from ("leach-drainage", "leach-clay", "leach-constant", "leach-applied")
+        yield "leach-split-share"
     if crop.applied:
         yield from ("residual-sand", "residual-loam", "residual-clay")
     yield from _of_properties(samples.properties)

@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import re
+from pathlib import Path
 
 import pytest
 
+import schorl
 from schorl.agronomy import tables as of_agronomy
 from schorl.agronomy.crops import crop_named
 from schorl.agronomy.methods import is_hot_water, method_row, same_method
@@ -109,3 +111,12 @@ def test_class_limits_are_for_crops_and_methods_that_exist():
             for name in first["crops"].split("|"):
                 assert crop_named(name).name == name
         assert first["method"] == "not named" or method_row(first["method"]) is not None
+
+
+def test_no_limit_stands_in_the_tables_unused():
+    code = "\n".join(
+        path.read_text(encoding="utf-8") for path in Path(schorl.__file__).parent.rglob("*.py")
+    )
+    for name in ("limits", "machine_limits"):
+        held = {row["id"] for table_name, row in ROWS if table_name == name}
+        assert not {one for one in held if f'"{one}"' not in code}

@@ -161,3 +161,22 @@ def test_only_rows_that_hold_some_soil_are_named():
     assert keys(by_need("sugar beet", "maize"), "ceilings") == ["sensitive"]
     assert keys(by_need("sugar beet", ""), "ceilings") == ["sensitive"]
     assert keys(by_need("sunflower", "dry bean"), "ceilings") == ["very-sensitive"]
+
+
+def test_a_declared_texture_is_named_with_its_standing_and_an_unknown_one_asked_about():
+    surfaces = {name: one for name, one in RECORD.surfaces.items() if name != "clay"}
+    properties = {k: v for k, v in RECORD.samples.properties.items() if k != "clay"}
+    samples = replace(RECORD.samples, properties=properties)
+
+    def declared(texture):
+        chosen = CropSettings(crop="sugar beet", next_crop="sugar beet", texture=texture)
+        return assess_cells(samples, surfaces, RECORD.grid, replace(RECORD.settings, crop=chosen))
+
+    found = declared("Clay-Loam")
+    assert keys(found, "textures") == ["clay loam"]
+    assert found.need.target_mg_kg == pytest.approx(0.8 + 0.4 * 25 / 30)
+    said = [one.what for one in found.findings if one.code == "RATE-STATUS"]
+    assert any(one.startswith("memory: textures: clay loam") for one in said)
+    with pytest.raises(UsageProblem) as asked:
+        declared("heavy")
+    assert asked.value.findings[0].code == "RATE-TEXTURE"
