@@ -71,7 +71,12 @@ FACTS: tuple[tuple[str, str, Any, str], ...] = (
         INTERPRETATIONS,
         "How a test becomes a target [crop need].",
     ),
-    ("--region", "crop.region", str, "Regional class limits, with --interpretation 'class table'."),
+    (
+        "--region",
+        "crop.region",
+        str,
+        "Class limits of a country, with --interpretation 'class table' (`schorl tables`).",
+    ),
     ("--target-mg-kg", "crop.target_mg_kg", float, "Your own target for available boron."),
     ("--ceiling-mg-kg", "crop.ceiling_mg_kg", float, "Your own soil ceiling."),
     ("--drainage-mm", "crop.drainage_mm", float, "Water draining through before uptake."),

@@ -10,11 +10,18 @@ from schorl.findings import Finding, finding
 from schorl.machinery.blends import blend_share, is_blended, share_range
 from schorl.machinery.rates import boron_per_unit, rate_band
 from schorl.machinery.saying import Saying
-from schorl.machinery.solids import Solid, dissolved_solid, most_boron_g_l, water_temperature_c
-from schorl.machinery.tables import machine_limit
+from schorl.machinery.solids import (
+    Solid,
+    dissolved_solid,
+    most_boron_g_l,
+    saturation_rows,
+    water_temperature_c,
+)
+from schorl.machinery.tables import machine_limit, table
 from schorl.machinery.ways_out import ways_out, ways_words
 from schorl.model.prescription import MachinePoint
 from schorl.model.settings import Form, Machine, Placement, Product
+from schorl.model.sourced import UNSURE
 
 EDGE = 1e-6
 
@@ -76,8 +83,22 @@ def notice(spread: Spread, points: Sequence[MachinePoint]) -> tuple[Finding, ...
     if spread.product.form is Form.GRANULE:
         found += _of_granules(spread, points)
     else:
-        found += [*_of_mix(spread), *_of_leaves(spread, points)]
+        found += [*_of_mix(spread), *_of_leaves(spread, points), *_of_standing(spread)]
     return tuple(found)
+
+
+def _of_standing(spread: Spread) -> Iterator[Finding]:
+    """Solubilities that nobody looked up and that a mix rests on."""
+    if spread.solid is None:
+        return
+    celsius = water_temperature_c(spread.machine.water_temperature_c)
+    rows = [table("solubility")[name] for name in saturation_rows(spread.solid, celsius)]
+    unsure = [
+        f"{row['id']} {row['value']} ({row['status']})" for row in rows if row["status"] in UNSURE
+    ]
+    if unsure:
+        what = f"the mix rests on solubility: {', '.join(unsure)}"
+        yield finding("MACHINE-STATUS", where="mix", what=what)
 
 
 def _of_rates(spread: Spread) -> Iterator[Finding]:

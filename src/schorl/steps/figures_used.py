@@ -23,13 +23,15 @@ BEHIND: Mapping[Limit, tuple[str, ...]] = {
     Limit.SOIL_CEILING: _CEILINGS,
     Limit.HOT_SPOT: (*_CEILINGS, "limits: hot-chance"),
     Limit.LEAST_WORTH: ("limits: least-worth",),
+    Limit.MACHINE: ("solubility: ",),
 }
 
 
 def rests_on(by: Limit, sources: Sequence[Source]) -> str:
-    """The rows behind the limit that ruled, each with how far it was checked; "" for a machine.
+    """The rows behind the limit that ruled, each with how far it was checked.
 
-    For example "targets: high-1, high-2 (proposal); limits: least-worth (proposal)".
+    For example "targets: high-1, high-2 (proposal); limits: least-worth (proposal)"; of a machine
+    only what its mix rests on.
     """
     groups: dict[tuple[str, str], list[str]] = {}
     for row in sources:
