@@ -97,6 +97,12 @@ def setting_rows(record: RunRecord, shown: Shown) -> list[tuple[str, str]]:
     ]
     if machine.sections > 1:
         rows.append(("Sections", str(machine.sections)))
+    if machine.headland_m:
+        rows.append(("Headland", shown.length(machine.headland_m, 1)))
+    if machine.first_pass:
+        rows.append(("First pass", machine.first_pass))
+    if not machine.can_do_zero:
+        rows.append(("Rate 0", "by hand: the machine cannot shut off by itself"))
     if machine.step:
         rows.append(("Step of the rate", shown.rate(machine.step)))
     if machine.least_rate:
