@@ -70,6 +70,12 @@ def _method_faults(rows: Sequence[Row]) -> Iterator[str]:
                 yield f"`{name}` names both {names[name]} and {row['id']}"
 
 
+def _tissue_faults(rows: Sequence[Row]) -> Iterator[str]:
+    for row in rows:
+        if not any(row[one] for one in ("deficient_below", "sufficient_from", "toxic_above")):
+            yield f"row `{row['id']}` has no figure"
+
+
 SCHEMAS: Mapping[str, Schema] = MappingProxyType(
     {
         "cautions": Schema(
@@ -143,6 +149,20 @@ SCHEMAS: Mapping[str, Schema] = MappingProxyType(
         "textures": Schema(
             columns={"sand_pct": number(0, 100), "clay_pct": number(0, 100)},
             units=frozenset({"%"}),
+        ),
+        "tissue": Schema(
+            columns={
+                "crops": _FREE,
+                "part": _FREE,
+                "stage": _MAYBE,
+                "deficient_below": number(1, 100, needed=False),
+                "sufficient_from": number(1, 200, needed=False),
+                "sufficient_to": number(1, 300, needed=False),
+                "toxic_above": number(20, 1000, needed=False),
+            },
+            units=frozenset({"mg/kg dry matter"}),
+            rising=("deficient_below", "sufficient_from", "sufficient_to", "toxic_above"),
+            more=_tissue_faults,
         ),
         "trade_facts": Schema(
             columns={"saying": _FREE, "used_for": _FREE, "published": _FREE},

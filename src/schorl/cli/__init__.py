@@ -16,6 +16,7 @@ COMMANDS = {
     "verify": "Say whether a pack or file is whole, valid and what its record says.",
     "adapt": "Bring a pack to another product, machine or controller, never with more boron.",
     "compare": "Say what changed between seasons, whether it is real, and what to do.",
+    "tissue": "Say by leaf and brix checks where a foliar pass is warranted, and prescribe it.",
     "tables": "Show the figures Schorl works with, each with its source.",
     "explain": "Explain a finding code in full.",
 }

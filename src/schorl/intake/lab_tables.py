@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import re
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -40,8 +41,15 @@ class Table:
     footer: tuple[tuple[int, str], ...] = ()  # lines under the samples that are none, left out
 
 
-def read_table(path: Path, *, layer: str | None) -> Table:
-    """Read a CSV or XLSX file.
+def _soil_columns(row: Sequence[str]) -> int:
+    """How many cells of a row name something of a soil test."""
+    return len({one.what for one in recognise(row)})
+
+
+def read_table(
+    path: Path, *, layer: str | None, known: Callable[[Sequence[str]], int] = _soil_columns
+) -> Table:
+    """Read a CSV or XLSX file; the row of names is the one of which ``known`` knows most cells.
 
     Raises
     ------
@@ -60,7 +68,8 @@ def read_table(path: Path, *, layer: str | None) -> Table:
         how = f"{encoding}, {named}, decimal {'comma' if comma else 'point'}"
     if len(raw) > MOST_ROWS:
         raise refuse("IN-ROWS", path, f"{len(raw)} rows; at most {MOST_ROWS} are read")
-    return _with_header(path, raw, comma, how, aligned=path.suffix.lower() == ".xlsx")
+    aligned = path.suffix.lower() == ".xlsx"
+    return _with_header(path, raw, comma, how, aligned=aligned, known=known)
 
 
 def _decoded(path: Path, data: bytes) -> tuple[str, str]:
@@ -180,11 +189,17 @@ def _cell_text(cell: object) -> str:
 
 
 def _with_header(
-    path: Path, raw: list[list[str]], comma: bool, how: str, *, aligned: bool
+    path: Path,
+    raw: list[list[str]],
+    comma: bool,
+    how: str,
+    *,
+    aligned: bool,
+    known: Callable[[Sequence[str]], int],
 ) -> Table:
     best, place = 0, -1
     for line, row in enumerate(raw[:60]):
-        understood = len({one.what for one in recognise(row)})
+        understood = known(row)
         if understood > best:
             best, place = understood, line
     if best < 2:

@@ -12,6 +12,7 @@ from schorl.model.prescription import CellNeed, Prescription
 from schorl.model.samples import SampleSet
 from schorl.model.settings import RunSettings
 from schorl.model.surface import Surface
+from schorl.model.tissue import ZoneLeaves
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -40,3 +41,4 @@ class RunRecord:
     inputs_sha256: Mapping[str, str] = dataclass_field(default_factory=dict)
     versions: Mapping[str, str] = dataclass_field(default_factory=dict)
     adapted_from: str = ""
+    leaf_checks: tuple[ZoneLeaves, ...] = ()  # evidence behind a foliar pass

@@ -60,6 +60,7 @@ def summary(record: RunRecord) -> dict[str, Any]:
         "sources": [dict(row) for row in prescription.sources],
         "adapted_from": record.adapted_from,
         "profile": _profile(record),
+        "leaf_checks": [plain_fields(one) for one in record.leaf_checks],
     }
 
 

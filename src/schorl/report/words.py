@@ -9,6 +9,7 @@ from schorl.model.prescription import Limit, ZoneRate
 from schorl.model.record import RunRecord
 from schorl.model.settings import Form
 from schorl.model.surface import Surface, Verdict
+from schorl.model.tissue import ZoneLeaves
 from schorl.model.zones import ZoneKind
 from schorl.report.shown import UNKNOWN, Shown, figure, percent
 
@@ -214,6 +215,20 @@ def closing_table(record: RunRecord) -> str:
     said = [f"{counts[word]} {word}{'s' if counts[word] > 1 else ''}" for word in counts]
     if said:
         lines += _wrapped(f"Findings: {listed(sorted(said))}; the report lists them.")
+    return "\n".join(lines)
+
+
+def leaf_table(zones: Sequence[ZoneLeaves]) -> str:
+    """What leaves say of each zone, in at most 80 columns, for the terminal."""
+    import textwrap
+
+    lines = []
+    for one in zones:
+        head = f"zone {one.zone}: {one.verdict}"
+        lines += [
+            head,
+            *textwrap.wrap(one.why, WIDTH - 2, initial_indent="  ", subsequent_indent="  "),
+        ]
     return "\n".join(lines)
 
 

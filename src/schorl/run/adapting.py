@@ -77,7 +77,7 @@ def whole_record(folder: Path) -> RunRecord:
 
 
 def _change(record: RunRecord, wanted: Wanted) -> tuple[Change, tuple[Finding, ...]]:
-    said = _read_sections(wanted.machine_file) if wanted.machine_file else {}
+    said = read_sections(wanted.machine_file) if wanted.machine_file else {}
     product = {**said.get("product", {}), **(wanted.product or {})}
     where = wanted.machine_file.name if wanted.machine_file else "options"
     job = check_job({"machine": said.get("machine", {}), "product": product}, where=where)
@@ -97,7 +97,7 @@ def _change(record: RunRecord, wanted: Wanted) -> tuple[Change, tuple[Finding, .
     return change, (*notes, *(machine_notes(job) if machine else ()))
 
 
-def _read_sections(path: Path) -> dict[str, dict[str, Any]]:
+def read_sections(path: Path) -> dict[str, dict[str, Any]]:
     """The [machine] and [product] of a TOML file; keys outside sections are the machine's."""
     try:
         values = tomllib.loads(path.read_text(encoding="utf-8-sig"))

@@ -1,0 +1,104 @@
+"""From a written pack and checks of leaves to an answer, and a pack of the pass where there is one."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import Any
+
+from schorl.agronomy.crops import crop_named
+from schorl.agronomy.tissue_checks import leaf_range
+from schorl.errors import Refusal, UsageProblem
+from schorl.findings import finding
+from schorl.formats.whole_folder import sha256_of
+from schorl.intake.tissue import read_tissue
+from schorl.jobs import check_job
+from schorl.model.settings import Form, Override
+from schorl.model.tissue import LeafRange
+from schorl.run.adapting import read_sections, whole_record
+from schorl.run.settings import machine_of, product_of
+from schorl.steps.leaf_pass import LeafAnswer, LeafJob, check_leaves
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LeafWanted:
+    """What a person says about a foliar pass; ``range_row`` names a row of the table of leaves."""
+
+    product: Mapping[str, Any]  # keys of a job's [product]
+    machine_file: Path | None = None
+    range_row: str | None = None
+    deficient_below: float | None = None
+    sufficient_from: float | None = None
+    toxic_above: float | None = None
+    by: str = ""
+    dose_kg_ha: float | None = None
+    season: str | None = None
+
+
+def tissue_answer(folder: Path, table: Path, wanted: LeafWanted) -> LeafAnswer:
+    """Judge the zones of a pack by a table of leaf checks.
+
+    Raises
+    ------
+    UsageProblem
+        A liquid product is not given, an own range without a person, keys or values that are
+        not known (exit 2).
+    Refusal
+        The pack or table cannot be taken up (exit 3), or there is no range (exit 4).
+    """
+    record = whole_record(folder)
+    reading = read_tissue(table, field=record.field)
+    if reading.value is None:
+        raise Refusal(reading.findings)
+    crop = crop_named(record.settings.crop.crop).name
+    held, override = _range(crop, wanted)
+    said = read_sections(wanted.machine_file) if wanted.machine_file else {}
+    values = {
+        "machine": said.get("machine", {}),
+        "product": {**said.get("product", {}), **wanted.product, "form": "spray"},
+    }
+    job = check_job(values, where="tissue")
+    if job.product.boron_g_l is None and job.product.boron_pct is None:
+        what = "the liquid's share of boron is not given"
+        hint = "give `--boron-g-l X`, or `--boron-pct X` with `--density-kg-l X`"
+        raise UsageProblem([finding("JOB-MISSING", where="tissue", what=what, hint=hint)])
+    machine = machine_of(job)
+    if "working_width_m" not in values["machine"]:
+        width = record.settings.machine.working_width_m
+        machine = replace(machine, working_width_m=width)
+    source = f"{folder.name}, manifest {sha256_of((folder / 'manifest.json').read_bytes())}"
+    return check_leaves(
+        record,
+        reading.value,
+        LeafJob(
+            held=held, product=replace(product_of(job), form=Form.SPRAY), machine=machine,
+            season=wanted.season or f"{record.settings.season}-leaves",
+            dose_kg_ha=wanted.dose_kg_ha, override=override,
+        ),
+        source=source,
+    )  # fmt: skip
+
+
+def _range(crop: str, wanted: LeafWanted) -> tuple[LeafRange, Override | None]:
+    own = (wanted.deficient_below, wanted.sufficient_from)
+    if own == (None, None):
+        return leaf_range(crop, row=wanted.range_row), None
+    if not wanted.by.strip():
+        what = "an own range of leaf boron needs the person who answers for it"
+        raise UsageProblem([finding("JOB-MISSING", where="tissue", what=what, hint="give `--by`")])
+    low, enough = own
+    if low is not None and enough is not None and low > enough:
+        what = f"deficient below {low:g} lies above sufficient from {enough:g}"
+        raise UsageProblem([finding("JOB-VALUE", where="tissue", what=what)])
+    held = LeafRange(
+        part="as sampled", stage="", deficient_below=low, sufficient_from=enough,
+        toxic_above=wanted.toxic_above, row=f"own range of {wanted.by}", status="own",
+        source=wanted.by,
+    )  # fmt: skip
+    value = low if low is not None else float(enough or 0.0)
+    override = Override(
+        what="leaf range", value=value, unit="mg/kg dry matter", person=wanted.by,
+        reason=f"{crop}: no row of the table was used",
+    )  # fmt: skip
+    return held, override
