@@ -297,6 +297,7 @@ def marl_pit(random: np.random.Generator) -> None:
     write_geojson(folder / "boundary.geojson", [({"field": "Marl Pit"}, field)])
     write_text(folder / "Bericht.csv", "\r\n".join(lines) + "\r\n", encoding="latin-1")
     write_text(folder / "job.toml", MARL_PIT_JOB)
+    write_text(folder / "leaves.csv", MARL_PIT_LEAVES)
 
 
 MARL_PIT_JOB = """\
@@ -340,7 +341,16 @@ seed. Nothing was measured, and no place, person or farm is meant.
 |---|---|
 | long_acre | 50 ha with a pond, 60 grid samples in two seasons, granules |
 | kiln_close | 12 zone composites joined to a zone layer by name, a spray on the soil |
-| marl_pit | a messy laboratory sheet: Latin-1, decimal comma, `<`, lb/acre, a preamble |
+| marl_pit | a messy laboratory sheet: Latin-1, decimal comma, `<`, lb/acre, a preamble; leaf checks |
+"""
+
+
+MARL_PIT_LEAVES = """\
+check,zone,leaf boron (mg/kg),young leaf boron (mg/kg),old leaf boron (mg/kg),brix evening,brix morning
+L1,1,15,12,22,9.0,9.5
+L2,1,16,13,20,8.5,8.6
+L3,2,36,34,36,9.0,7.0
+L4,2,38,36,39,9.5,7.2
 """
 
 

@@ -216,13 +216,16 @@ LIKELY = 2 / 3
 def doubtful_places(record: RunRecord) -> Doubtful:
     """Where the zone's rate goes against the cell's own chances, two times in three.
 
-    Keep-off areas and hot spots are untreated on purpose and never counted as left short.
+    Keep-off areas and hot spots are untreated on purpose and never counted as left short. A pass
+    that leaves asked for goes by them, not by the soil: nothing is doubtful by the soil then.
     """
     zone_map = record.prescription.zone_map
     on_purpose = np.array([zone.kind != "zone" for zone in zone_map.zones])[zone_map.labels]
     chance, treated = short_before(record), rate_per_cell(record) > 0
     fed = treated & (chance < 1 - LIKELY)
     left = ~treated & ~on_purpose & (chance > LIKELY)
+    if record.leaf_checks:
+        fed, left = np.zeros_like(fed), np.zeros_like(left)
     cell_ha = record.field.area_ha / record.grid.n_cells
     return Doubtful(
         fed=fed.astype(np.intp),

@@ -7,6 +7,7 @@ import hashlib
 
 from schorl.model.record import RunRecord
 from schorl.report import sections_answer as answer
+from schorl.report import sections_leaves as leaves
 from schorl.report import sections_rates as rates
 from schorl.report import sections_trust as trust
 from schorl.report.field_map import field_map
@@ -15,7 +16,7 @@ from schorl.report.markup import Safe, join, tag
 from schorl.report.readings import facts_script
 from schorl.report.words import shown_of
 
-CONTENTS = (
+CONTENTS: tuple[tuple[str, str], ...] = (
     ("map-head", "Map"),
     ("zones", "Zones"),
     ("ruled", "What ruled"),
@@ -50,6 +51,7 @@ def report_page(record: RunRecord) -> bytes:
         answer.take_care(record, shown),
         map_part,
         rates.zone_section(record, shown),
+        *([leaves.leaf_section(record)] if record.leaf_checks else []),
         rates.ruled_section(record, shown),
         rates.outlook_section(record, shown),
         rates.value_section(record, shown),
@@ -62,7 +64,11 @@ def report_page(record: RunRecord) -> bytes:
     ]
     title = f"{record.settings.field_name}, {record.settings.season}: boron prescription"
     extra = facts_script(facts)
-    return document(title, _header(record), CONTENTS, body, rules=rules, facts=extra)
+    contents = CONTENTS
+    if record.leaf_checks:
+        place = [anchor for anchor, _ in CONTENTS].index("ruled")
+        contents = (*CONTENTS[:place], ("leaves", "Leaves"), *CONTENTS[place:])
+    return document(title, _header(record), contents, body, rules=rules, facts=extra)
 
 
 def _header(record: RunRecord) -> Safe:
