@@ -9,7 +9,7 @@ changes, six times at most.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy import ndimage
@@ -52,6 +52,20 @@ def kernel_of(ground: Ground, cell_m: float) -> Kernel:
     return Kernel(across, along)
 
 
+def spared_kernel_of(ground: Ground, cell_m: float) -> Kernel:
+    """The rectangle with up to a cell to spare, since lines are simplified after they are drawn.
+
+    Cells larger than a quarter of a side spare a quarter of it, lest zones lose more than the
+    simplified corners are worth.
+    """
+    wider = replace(
+        ground,
+        width_m=ground.width_m + min(cell_m, ground.width_m / 4.0),
+        run_m=ground.run_m + min(cell_m, ground.run_m / 4.0),
+    )
+    return kernel_of(wider, cell_m)
+
+
 def least_kernel_of(ground: Ground, cell_m: float) -> Kernel:
     """Rectangle of whole cells that is not larger than the ground: to judge, not to draw."""
     return Kernel(
@@ -81,7 +95,7 @@ def make_workable(layers: Layers, travel: TravelGrid, use: Flags, ground: Ground
     Parts of the field in which no rectangle fits are cut into strips across the direction of
     travel; parts under the least area become one piece.
     """
-    kernel = kernel_of(ground, travel.cell_m)
+    kernel = spared_kernel_of(ground, travel.cell_m)
     least_cells = int(np.ceil(ground.least_m2 / travel.cell_m**2))
     domain = domain_of(use, kernel)
     labels: Labels = np.where(use, layers.argmax(axis=0), -1).astype(np.int16)
