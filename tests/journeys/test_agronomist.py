@@ -163,7 +163,9 @@ def test_what_was_really_given_counts(packs, tmp_path):
     for row in answer["result"]["balance"]:
         assert row["applied"] == pytest.approx(0.5, abs=1e-4)
         assert row["removed"] > 0
-    assert "SEASON-APPLIED" not in {one["code"] for one in answer["findings"]}
+    said = {one["code"]: one["what"] for one in answer["findings"]}
+    assert "SEASON-APPLIED" not in said
+    assert said["SEASON-REMOVAL"] == "removal: sugar beet 10 g B/t roots and tops (read)"
     code, answer = run(
         "compare", packs / "Long-Acre-2025", packs / "Long-Acre-2026", "--out", tmp_path,
         "--applied", f"2019={given}",

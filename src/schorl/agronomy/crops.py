@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import re
 from dataclasses import dataclass
 
 from schorl.agronomy.tables import Row, table
@@ -25,7 +26,7 @@ class Crop:
 
 
 def crop_named(name: str, *, option: str = "--crop") -> Crop:
-    """The crop of that name or alias, whatever its capitals.
+    """The crop of that name or alias, whatever its capitals, in the plural or sown in any season.
 
     Raises
     ------
@@ -33,9 +34,11 @@ def crop_named(name: str, *, option: str = "--crop") -> Crop:
         An unknown crop, with the nearest names (exit 2).
     """
     wanted = " ".join(name.lower().split())
-    for row in table("crops"):
-        if wanted in _names(row):
-            return _crop(row)
+    bare = re.sub(r"^(winter|spring|summer|autumn) ", "", wanted)
+    for one in dict.fromkeys((wanted, bare, bare.removesuffix("s"))):
+        for row in table("crops"):
+            if one in _names(row):
+                return _crop(row)
     known = [one for row in table("crops") for one in _names(row)]
     near = difflib.get_close_matches(wanted, known, n=3, cutoff=0.4)
     nearest = f"nearest: {', '.join(near)}; " if near else ""
@@ -68,7 +71,13 @@ def _crop(row: Row) -> Crop:
     )
 
 
+def removal_row(name: str) -> Row | None:
+    """The row of the boron that a tonne of a crop's harvest takes away; None where there is none."""
+    wanted = crop_named(name).name
+    return next((row for row in table("removal") if row["id"] == wanted), None)
+
+
 def removal_g_t(name: str) -> float | None:
     """Boron that a tonne of harvest of a crop takes away, grams; None where no row says."""
-    wanted = crop_named(name).name
-    return next((float(row["g_b_t"]) for row in table("removal") if row["id"] == wanted), None)
+    row = removal_row(name)
+    return None if row is None else float(row["g_b_t"])

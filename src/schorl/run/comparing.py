@@ -8,7 +8,7 @@ from itertools import pairwise
 from pathlib import Path
 
 from schorl.errors import UsageProblem
-from schorl.findings import finding
+from schorl.findings import Finding, finding
 from schorl.formats.change import write_change
 from schorl.formats.pack import read_pack
 from schorl.formats.season import field_of, read_season
@@ -114,11 +114,23 @@ def _noted(change: SeasonChange) -> SeasonChange:
     if change.before.when > change.after.when:
         what = f"{change.before.season} is later than {change.after.season}"
         notes.append(finding("SEASON-ORDER", where="compare", what=what))
+    notes += _removal_notes(change.before)
     earlier = min(change.before, change.after, key=lambda one: one.when)
     if earlier.applied is None and not change.same:
         what = f"boron of {earlier.season} counts as prescribed"
         notes.append(finding("SEASON-APPLIED", where=earlier.season, what=what))
     return replace(change, findings=tuple(notes))
+
+
+def _removal_notes(pack: SeasonPack) -> list[Finding]:
+    """The row behind the boron that a crop took away, with how far it was checked."""
+    from schorl.agronomy.crops import removal_row
+
+    row = None if pack.removed_kg_ha is None else removal_row(pack.crop)
+    if row is None:
+        return []
+    what = f"removal: {row['id']} {row['g_b_t']} {row['unit']} ({row['status']})"
+    return [finding("SEASON-REMOVAL", where=pack.season, what=what)]
 
 
 def change_name(changes: Sequence[SeasonChange]) -> str:

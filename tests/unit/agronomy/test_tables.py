@@ -13,6 +13,7 @@ from schorl.agronomy.crops import crop_named
 from schorl.agronomy.methods import is_hot_water, method_row, same_method
 from schorl.agronomy.schemas import SCHEMAS
 from schorl.agronomy.targets import class_rows, regions
+from schorl.errors import UsageProblem
 from schorl.intake.headers import METHOD_WORDS
 from schorl.machinery import tables as of_machines
 from schorl.model.sourced import STATUSES
@@ -120,3 +121,30 @@ def test_no_limit_stands_in_the_tables_unused():
     for name in ("limits", "machine_limits"):
         held = {row["id"] for table_name, row in ROWS if table_name == name}
         assert not {one for one in held if f'"{one}"' not in code}
+
+
+@pytest.mark.parametrize(
+    ("written", "name"),
+    [
+        ("Sugar Beets", "sugar beet"),
+        ("winter oilseed rape", "oilseed rape (canola)"),
+        ("Spring  Barley", "barley"),
+        ("winter oats", "oats"),
+        ("soybeans", "soybean"),
+        ("peas", "field pea"),
+        ("beans", "dry bean"),
+        ("Ackerbohne", "faba bean"),
+        ("Luzerne", "alfalfa (lucerne)"),
+        ("strawberries", "strawberry"),
+    ],
+)
+def test_crops_as_growers_write_them(written, name):
+    assert crop_named(written).name == name
+
+
+@pytest.mark.parametrize("written", ["field bean", "bohne", "s", "winter", "beat", "oilseed"])
+def test_names_that_mean_two_crops_or_none_are_asked_about(written):
+    """Field bean is a faba bean in Britain, which is fed, and a Phaseolus in America, which is not."""
+    with pytest.raises(UsageProblem) as asked:
+        crop_named(written)
+    assert asked.value.findings[0].code == "RATE-CROP"
