@@ -118,6 +118,9 @@ class PlanValue:
     loss_kg: float
     short_ha: float
     over_ha: float
+    cost: float | None = (
+        None  # boron and expected loss in the job's currency, where prices are given
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

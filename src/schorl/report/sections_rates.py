@@ -156,6 +156,9 @@ def value_section(record: RunRecord, shown: Shown) -> Safe:
         "Plan", "Boron", f"Loss, {shown.boron_unit} boron", f"Short, {shown.area_unit}",
         f"Over, {shown.area_unit}",
     ]  # fmt: skip
+    priced = any(plan.cost is not None for plan in prescription.value)
+    currency = record.settings.crop.currency or "money"
+    head += [f"Boron and loss, {currency}"] if priced else []
     rows = [
         [
             plan.plan.capitalize(),
@@ -163,6 +166,7 @@ def value_section(record: RunRecord, shown: Shown) -> Safe:
             shown.boron(plan.loss_kg).split()[0],
             shown.area_figure(plan.short_ha),
             shown.area_figure(plan.over_ha),
+            *([figure(plan.cost, 0)] if priced else []),
         ]
         for plan in prescription.value
     ]

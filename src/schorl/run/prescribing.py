@@ -57,6 +57,7 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
     Refusal
         Where there is no honest or safe answer (exit 4), with all findings so far.
     """
+    from schorl.steps.interpretations import other_readings
     from schorl.steps.mapping import map_surfaces
     from schorl.steps.rating import assess_cells, plan_outcome, prescribe_rates
     from schorl.steps.zoning import draw_zones
@@ -90,6 +91,13 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
     _keep(found, zoned.findings)
     rated = prescribe_rates(zoned.zone_map, assessed, samples, mapped.surfaces, grid, settings)
     _keep(found, rated.findings)
+    given = {rate.zone: rate.boron_kg_ha for rate in rated.prescription.rates}
+    found.extend(
+        other_readings(
+            zoned.zone_map, given, samples, mapped.surfaces, grid,
+            replace(settings, machine=rated.machine),
+        )
+    )  # fmt: skip
     settings = replace(settings, machine=rated.machine)
     found.extend(_override_notes(settings.overrides))
     record = RunRecord(

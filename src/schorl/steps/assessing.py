@@ -11,7 +11,7 @@ import shapely
 
 from schorl.agronomy.caps import absolute_limit_kg_ha, rate_cap
 from schorl.agronomy.chances import chance_over_ceiling
-from schorl.agronomy.crops import Crop, crop_named
+from schorl.agronomy.crops import Crop, crop_named, removal_g_t
 from schorl.agronomy.methods import method_row
 from schorl.agronomy.soil_mass import (
     bulk_density_g_cm3,
@@ -21,7 +21,7 @@ from schorl.agronomy.soil_mass import (
 )
 from schorl.agronomy.tables import limit, trace
 from schorl.agronomy.textures import texture_named
-from schorl.errors import Refusal
+from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, finding
 from schorl.model.arrays import Flags, Floats
 from schorl.model.field import CellGrid
@@ -93,6 +93,8 @@ def assess_cells(
     at_samples = _need_at_samples(samples, grid, need)
     cap = rate_cap(crop, settings.placement, settings.overrides)
     more = [*more, *_texture_used(samples, settings), trace(cap.table, cap.row, cap.kg_ha)]
+    if settings.crop.maintenance_yield_t_ha is not None:
+        more.append(trace("removal", crop.name, float(removal_g_t(crop.name) or 0.0)))
     found.extend(_status_notes([*sources, *more]))
     if crop.perennial:
         what = f"{crop.name}: only the yearly cap is given here"
@@ -248,8 +250,9 @@ def _need(
     credit, used = _credits(samples, grid, settings, soil)
     cap = rate_cap(crop, settings.placement, settings.overrides).kg_ha
     most = min(cap, absolute_limit_kg_ha(crop, settings.overrides))
+    kept = maintenance_kg_ha(crop, settings) * (boron.estimate < target)
     bare = CellNeed(
-        need_mean_kg_ha=(target - boron.estimate) * mass - credit,
+        need_mean_kg_ha=(target - boron.estimate) * mass + kept - credit,
         need_sd_kg_ha=_own_sd(boron, spread) * mass,
         boron_mg_kg=boron.estimate,
         boron_location=boron.location,
@@ -263,6 +266,26 @@ def _need(
         hot=np.zeros(grid.n_cells, dtype=bool),
     )
     return _with_hot(bare, samples, grid, settings)
+
+
+def maintenance_kg_ha(crop: Crop, settings: RunSettings) -> float:
+    """Boron that the harvest takes away, kg/ha, where maintenance is asked for by a yield; else 0.
+
+    Only ground below its target gets it: soil that has enough can spare a harvest's boron.
+
+    Raises
+    ------
+    UsageProblem
+        No figure for the crop's removal (exit 2).
+    """
+    yield_t_ha = settings.crop.maintenance_yield_t_ha
+    if yield_t_ha is None:
+        return 0.0
+    grams = removal_g_t(crop.name)
+    if grams is None:
+        what = f"no figure for the boron that a tonne of {crop.name} takes away"
+        raise UsageProblem([finding("RATE-REMOVAL", where="crop", what=what)])
+    return grams * yield_t_ha / 1000.0
 
 
 def _own_sd(boron: Surface, spread: Floats) -> Floats:

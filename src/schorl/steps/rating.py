@@ -306,6 +306,21 @@ def _plan_value(
         loss_kg=seen.loss_kg,
         short_ha=seen.short_after_ha,
         over_ha=seen.over_after_ha,
+        cost=plan_cost(float(rate.mean()) * area_ha, seen.loss_kg, settings),
+    )
+
+
+def plan_cost(boron_kg: float, loss_kg: float, settings: RunSettings) -> float | None:
+    """Boron bought and expected loss in money; None unless both prices are given.
+
+    The loss counts a kilogram in excess once and one short ``cost_ratio`` times, so one that is
+    short costs its price.
+    """
+    crop = settings.crop
+    if crop.price_boron_per_kg is None or crop.price_yield_per_kg_short is None:
+        return None
+    return boron_kg * crop.price_boron_per_kg + (
+        loss_kg / crop.cost_ratio * crop.price_yield_per_kg_short
     )
 
 
