@@ -77,8 +77,8 @@ def _sandy(treated: list[ZoneRate]) -> list[str]:
         return []
     return [
         f"Zone {', '.join(sandy)}: sand low in organic matter. A humate-carried granule, or humic "
-        "or fulvic acid in the mix, holds boron longer; raising organic matter is the lasting "
-        "remedy."
+        "or fulvic acid in the mix, is said to hold boron longer (common practice, no source); "
+        "raising organic matter is the lasting remedy."
     ]
 
 
