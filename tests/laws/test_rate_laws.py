@@ -1,7 +1,11 @@
-"""Laws of the dose: no option, soil or machine may cross them."""
+"""Laws of the dose: no option, soil or machine may cross them.
+
+A thousand cases each; SCHORL_CASES=100000 in the environment asks for more.
+"""
 
 from __future__ import annotations
 
+import os
 from dataclasses import replace
 
 import numpy as np
@@ -32,9 +36,10 @@ from schorl.model.settings import (
     RunSettings,
 )
 from schorl.steps.zone_rates import best_rate_kg_ha, plan_outcome, ruled_rate, unevenness_of
+from support.one_soil import ruled
 
 CROPS = st.sampled_from([row["id"] for row in table("crops")])
-CASES = settings(max_examples=1000, deadline=None)
+CASES = settings(max_examples=int(os.environ.get("SCHORL_CASES", "1000")), deadline=None)
 
 
 @st.composite
@@ -191,3 +196,62 @@ def test_the_same_soil_in_five_units(mg_kg):
     }  # fmt: skip
     for unit, value in printed.items():
         assert value * factors[unit] == pytest.approx(mg_kg, rel=1e-9)
+
+
+TEXTURES = {name: [row["id"] for row in table("crops") if row["ceiling_class"] == name]
+            for name in ("texture", "sensitive", "very sensitive")}  # fmt: skip
+
+
+@given(
+    boron=st.floats(0.02, 3.0),
+    clay=st.floats(1, 60),
+    matter=st.floats(0.3, 9),
+    classes=st.lists(st.sampled_from(list(TEXTURES)), min_size=2, max_size=2),
+)
+@CASES
+def test_a_more_sensitive_next_crop_never_raises_a_rate(boron, clay, matter, classes):
+    """The same crop on the same soil, before two crops of differing sensitivity."""
+    order = list(TEXTURES)
+    milder, harder = sorted(classes, key=order.index)
+    given_rates = [
+        ruled(
+            "sugar beet", boron, clay_pct=clay, organic_matter_pct=matter,
+            next_crop=TEXTURES[name][0],
+        ).boron_kg_ha
+        for name in (milder, harder)
+    ]  # fmt: skip
+    assert given_rates[1] <= given_rates[0] + 1e-9
+
+
+@given(
+    boron=st.floats(0.02, 3.0), more=st.floats(0.0, 1.0), clay=st.floats(1, 60),
+    matter=st.floats(0.3, 9), crop=CROPS, placement=st.sampled_from(["broadcast", "foliar"]),
+)  # fmt: skip
+@CASES
+def test_from_soil_to_rate_more_boron_never_gives_more(boron, more, clay, matter, crop, placement):
+    def rate(value):
+        return ruled(
+            crop, value, clay_pct=clay, organic_matter_pct=matter, placement=placement
+        ).boron_kg_ha
+
+    assert rate(boron + more) <= rate(boron) + 1e-7
+
+
+#: One field in five systems: unit of the test and of the rate, and what they are of mg/kg, kg/ha.
+SYSTEMS = {
+    "mg/kg": 1.0, "ug/kg": 1e3, "g/kg": 1e-3, "mg/100g": 0.1, "lb/acre": 2.0,
+}  # fmt: skip
+
+
+@given(boron=st.floats(0.02, 3.0), clay=st.floats(1, 60), matter=st.floats(0.3, 9))
+@CASES
+def test_a_field_in_five_unit_systems_gets_the_same_rates(boron, clay, matter):
+    """What a laboratory prints in any unit ends in the same rate, to nine figures."""
+    rates = [
+        ruled(
+            "sugar beet", boron * printed * FACTORS["boron"][unit], clay_pct=clay,
+            organic_matter_pct=matter,
+        ).boron_kg_ha
+        for unit, printed in SYSTEMS.items()
+    ]  # fmt: skip
+    assert rates == pytest.approx([rates[0]] * len(rates), rel=1e-6, abs=1e-9)
