@@ -124,7 +124,10 @@ def _row_text(row: Mapping[str, str]) -> str:
     figures = [
         f"{LABELS.get(key, key.replace('_', ' '))} {value}"
         for key, value in row.items()
-        if value and key not in (*COMMON, *SENTENCES, "value") and (key, value) not in UNTOLD
+        if value
+        and key not in (*COMMON, *SENTENCES, "value")
+        and (key, value) not in UNTOLD
+        and value != row["id"]
     ]
     unit = "" if row["unit"] == "-" else f" [{row['unit']}]"
     if "value" in row:
