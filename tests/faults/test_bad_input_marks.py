@@ -106,6 +106,7 @@ FOOTERS = [
     "\nAnalysed by the north bench on 3 March,,,,,\n",
     "All results on dry soil\n",
     "Mittelwert:,,,0.61,2.3,17\nBemerkung: Trockenmasse,,,,,\n",
+    "Mean (n = 24),,,0.61,2.3,17\n",
 ]
 
 
@@ -118,6 +119,13 @@ def test_lines_under_a_table_are_left_out_and_named(tmp_path, field, footer):
     assert codes(reading).count("IN-FOOTER") == len([one for one in footer.splitlines() if one])
     first = footer.strip().split(",")[0]
     assert any(first in one.what for one in reading.findings if one.code == "IN-FOOTER")
+
+
+def test_samples_with_names_like_sums_stay(tmp_path, field):
+    rows = [*ROWS[:-2], ["Media luna", *ROWS[-2][1:]], ["Max field", *ROWS[-1][1:]]]
+    reading = read(tmp_path, field, table_text(rows))
+    assert len(reading.value) == len(ROWS)
+    assert "IN-FOOTER" not in codes(reading)
 
 
 def test_a_sample_that_lost_its_values_is_no_footer(tmp_path, field):

@@ -243,7 +243,8 @@ def _without_footer(
 
 def _is_footer(row: list[str], width: int) -> bool:
     filled = [cell.strip() for cell in row if cell.strip()]
-    summary = re.split(r"[\s:.=(]", plain_words(filled[0]))[0] in SUMMARIES
+    # The word alone, "Mean:" or "Mean (n = 24)": a sample may well be called "Media luna".
+    summary = re.sub(r"\s*[:=(].*", "", plain_words(filled[0])).strip(" .") in SUMMARIES
     lone = len(filled) == 1 and width > 2 and not filled[0].replace(".", "").isdigit()
     return summary or lone
 
