@@ -25,7 +25,7 @@ ROWS = [(name, row) for name in of_agronomy.table_names() for row in of_agronomy
 NO_SOURCE = re.compile(
     r"scribd|studylib|docplayer|docslib|eurekamag|peeref|biocyclopedia|what-when-how|zxc\.wiki"
     r"|druglead|how234|borichem|chempure|bluebay|suisco|dincat|louiskatz|apug|\bshop\b|code index"
-    r"|public file|index id",
+    r"|public file|index id|lfweb",
 )
 
 
