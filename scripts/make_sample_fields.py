@@ -107,6 +107,39 @@ def grid_points(field: Polygon, count: int, random: np.random.Generator) -> np.n
 OLD_HEAP = np.array([860.0, 110.0])
 
 
+#: What the spreader did in 2025: it ran empty in this corner, metres from the field's origin.
+EMPTY = box(-40, 300, 300, 660)
+#: Share of the boron given that the next test finds, and kg B/ha for 1 mg/kg over 20 cm.
+SHOWN_AGAIN, SOIL_MASS = 0.50, 2.8
+
+
+def write_log(path: Path, soil: Soil, field: Polygon, place: np.ndarray) -> None:
+    """What the spreader logged in 2025: points along its passes, product in kg/ha."""
+    west, south, east, north = field.bounds
+    grid = np.meshgrid(np.arange(west + 12, east, 24), np.arange(north - 12, south, -24))
+    points = np.column_stack([one.ravel() for one in grid])
+    points = points[shapely.contains_xy(shapely.buffer(field, 6), *points.T)]
+    rates = (20 * spread_kg_ha(soil, points, place)).round() / 2
+    features = [
+        {"type": "Feature", "properties": {"product_kg_ha": rate},
+         "geometry": {"type": "Point", "coordinates": [round(lon, 6), round(lat, 6)]}}
+        for (lon, lat), rate in zip(degrees(points).tolist(), rates.tolist(), strict=True)
+    ]  # fmt: skip
+    rows = ",\n".join(json.dumps(one) for one in features)
+    write_text(path, f'{{"type": "FeatureCollection", "features": [\n{rows}\n]}}\n')
+
+
+def spread_kg_ha(soil: Soil, points: np.ndarray, place: np.ndarray) -> np.ndarray:
+    """Boron that was spread in 2025: more where the soil held less.
+
+    None on the old heap, and none where the hopper had run out.
+    """
+    rate = np.clip(1.25 - 2.0 * (soil.boron_mg_kg(points, level=0.80) - 0.42), 0.0, 1.25)
+    none = shapely.contains_xy(EMPTY, *(points - place).T)
+    none |= np.hypot(*(points - place - OLD_HEAP).T) < 65
+    return np.where(none, 0.0, rate.round(2))
+
+
 def _nearest(points: np.ndarray, place: np.ndarray) -> int:
     return int(np.hypot(*(points - place).T).argmin())
 
@@ -129,10 +162,13 @@ def long_acre(random: np.random.Generator) -> None:
     field = Polygon(place + np.array(outer), [place + np.array(pond)])
     soil = Soil(random, origin=origin)
     points = grid_points(field, 60, random)
-    for season, level in ((2025, 0.80), (2026, 0.88)):
+    for season in (2025, 2026):
         folder = OUT / "long_acre" / str(season)
         write_geojson(folder / "boundary.geojson", [({"field": "Long Acre"}, field)])
-        boron = soil.measured(soil.boron_mg_kg(points, level=level), short=0.08, lab=0.08)
+        truth = soil.boron_mg_kg(points, level=0.80)
+        if season == 2026:
+            truth = truth + SHOWN_AGAIN * spread_kg_ha(soil, points, place) / SOIL_MASS
+        boron = soil.measured(truth, short=0.08, lab=0.08)
         boron[_nearest(points, place + OLD_HEAP)] = 2.35 if season == 2026 else 2.41
         clay = soil.measured(soil.clay_pct(points), short=0.05, lab=0.03)
         matter = soil.measured(soil.matter_pct(points), short=0.05, lab=0.03)
@@ -144,6 +180,8 @@ def long_acre(random: np.random.Generator) -> None:
                 f"{matter[number]:.1f},{clay[number]:.0f},{ph:.1f}"
             )
         write_text(folder / "soil.csv", "\n".join(lines) + "\n")
+        if season == 2026:
+            write_log(folder / "spread_2025.geojson", soil, field, place)
         write_text(
             folder / "job.toml", LONG_ACRE_JOB.format(season=season, more=MORE.get(season, ""))
         )
@@ -189,11 +227,14 @@ hopper_kg = 800
 {more}"""
 MORE = {
     2026: """
-# What last season's pack prescribed, as a figure: it is in this season's test already, and only
-# takes room under the rate caps.
+# What the spreader logged last season: it is in this season's test already, and only takes room
+# under the rate caps.
 [[applied]]
 on = 2025-04-10
-kg_ha = 0.80
+file = "spread_2025.geojson"
+column = "product_kg_ha"
+unit = "kg/ha"
+boron_pct = 10.0
 form = "granule"
 """
 }
@@ -339,7 +380,7 @@ seed. Nothing was measured, and no place, person or farm is meant.
 
 | field | what it shows |
 |---|---|
-| long_acre | 50 ha with a pond, 60 grid samples in two seasons, granules |
+| long_acre | 50 ha with a pond, 60 grid samples in two seasons, granules; `spread_2025.geojson` logs what was really spread (the hopper ran empty in the north-west) |
 | kiln_close | 12 zone composites joined to a zone layer by name, a spray on the soil |
 | marl_pit | a messy laboratory sheet: Latin-1, decimal comma, `<`, lb/acre, a preamble; leaf checks |
 """

@@ -20,7 +20,6 @@ from schorl.model.arrays import Floats
 from schorl.model.change import SeasonPack, SeasonZone
 from schorl.model.field import CellGrid, Field
 from schorl.model.samples import PROPERTY_UNITS, Campaign, Measured, SampleSet
-from schorl.model.settings import AppliedBoron
 from schorl.model.summary import SCHEMA
 
 #: Faults shown of a pack that is not whole; more of them say no more.
@@ -28,17 +27,13 @@ MOST_FAULTS = 6
 DEFAULT_LAB_SD = 0.15
 
 
-def read_season(
-    folder: Path, *, crs: str | None = None, applied: AppliedBoron | None = None
-) -> SeasonPack:
+def read_season(folder: Path, *, crs: str | None = None) -> SeasonPack:
     """Read a pack that is whole as one season.
 
     Parameters
     ----------
     crs
         Metric system to bring everything into; the pack's own where None.
-    applied
-        What was really given, in that system.
 
     Raises
     ------
@@ -70,7 +65,6 @@ def read_season(
         crop=summary["crop"]["crop"],
         identity=sha256_of((folder / "manifest.json").read_bytes()),
         retired_numbers=tuple(summary["zoning"].get("retired_numbers", ())),
-        applied=applied,
         findings=notes,
     )
 

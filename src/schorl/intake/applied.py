@@ -1,23 +1,33 @@
-"""Boron that was really given: as-applied files as polygons or points with rates."""
+"""Boron that was really given: as-applied files as polygons, lines or logged points with rates."""
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
 from datetime import date
 from pathlib import Path
+from typing import Any
 
+import numpy as np
 import shapely
 
-from schorl.findings import finding
+from schorl.findings import Finding, finding
 from schorl.geodesy import transform_geometry
 from schorl.intake.guards import Unreadable, refuse
 from schorl.intake.quantities import plain_words
 from schorl.intake.vectors import read_features
-from schorl.model.field import Field
+from schorl.model.field import Area, Field
 from schorl.model.reading import Reading
 from schorl.model.settings import AppliedBoron
 
 MOST_KG_HA = 20.0
-HALF_CELL_M = 6.0  # a logged point stands for a square of this half side
+USUAL_WIDTH_M = 24.0
+#: Share of the field that a file's rates must cover before it goes without saying.
+COVERED = 0.95
+#: A logged point speaks for ground up to this many widths (or gaps between points) away: more than
+#: half a square's diagonal, less than the next pass.
+REACH = 0.75
+Rated = list[tuple[Any, float]]
 
 
 def read_applied(
@@ -30,41 +40,123 @@ def read_applied(
     boron_pct: float | None,
     form: str,
     this_season: bool,
+    width_m: float = USUAL_WIDTH_M,
 ) -> Reading[AppliedBoron]:
     """Read an as-applied layer; rates become kg B/ha.
+
+    Polygons are taken as they are and may lie over each other (both passes count). Lines are passes
+    of ``width_m``. A logged point stands for the ground nearer to it than to any other point, as
+    far as the machine reached, so that a dense log and a sparse one give the same boron.
 
     The unit is never guessed: ``unit`` is "kg B/ha", or "kg/ha" or "lb/acre" of product with
     ``boron_pct``.
     """
     try:
         factor = _factor(path, unit, boron_pct)
-        features = read_features(path, layer=None, crs=None, option="samples")
-        wanted = plain_words(column or "boron_kg_ha")
-        areas = []
-        for geometry, row in zip(features.geometries, features.attributes, strict=True):
-            value = next((v for key, v in row.items() if plain_words(key) == wanted), None)
-            if geometry is None or not isinstance(value, int | float):
-                continue
-            moved = transform_geometry(geometry, source=features.crs, target=field.crs)
-            if not moved.is_valid:
-                moved = shapely.make_valid(moved, method="structure")
-            if moved.geom_type in ("Point", "MultiPoint"):
-                moved = shapely.buffer(moved, HALF_CELL_M, cap_style="square")
-            areas.append((moved, _sane(path, float(value) * factor)))
-        if not areas:
-            raise refuse("IN-COLUMN", path, f"no rates in a column `{column or 'boron_kg_ha'}`")
+        rows, without = _rows(path, column or "boron_kg_ha", field.crs)
+        rated = [(area, _sane(path, value * factor)) for area, value in rows]
+        areas, share = _in_field(path, _as_areas(rated, width_m), field)
     except Unreadable as problem:
         return Reading(value=None, findings=(problem.found,))
-    held = [(shapely.intersection(area, field.boundary).area, rate) for area, rate in areas]
-    total = sum(area for area, _ in held)
-    if total <= 0:
-        found = refuse("IN-ELSEWHERE", path, "none of the applied rates lies in the field").found
-        return Reading(value=None, findings=(found,))
-    mean = sum(area * rate for area, rate in held) / total
+    held = [area.area for area, _ in areas]
+    mean = float(np.average([rate for _, rate in areas], weights=held))
     applied = AppliedBoron(
-        on=on, kg_ha=mean, form=form, areas=tuple(areas), this_season=this_season, source=path.name
+        on=on, kg_ha=mean, form=form, areas=areas, this_season=this_season, source=path.name
     )
-    return Reading(value=applied)
+    return Reading(value=applied, findings=_notes(path, without, share))
+
+
+def _rows(path: Path, column: str, crs: str) -> tuple[Rated, int]:
+    """Geometries in metres with their figures, and how many features had no figure."""
+    features = read_features(path, layer=None, crs=None, option="samples")
+    wanted, rows, without = plain_words(column), [], 0
+    for geometry, attributes in zip(features.geometries, features.attributes, strict=True):
+        found = [v for key, v in attributes.items() if plain_words(key) == wanted]
+        if geometry is None or not found or not _is_figure(found[0]):
+            without += 1
+            continue
+        rows.append((transform_geometry(geometry, source=features.crs, target=crs), found[0]))
+    if not rows:
+        there = sorted({key for one in features.attributes for key in one})
+        said = f"no rates in a column `{column}`; there is {', '.join(there) or 'no column'}"
+        raise refuse("IN-COLUMN", path, said)
+    return rows, without
+
+
+def _is_figure(value: object) -> bool:
+    return isinstance(value, int | float) and not isinstance(value, bool) and math.isfinite(value)
+
+
+def _as_areas(rated: Rated, width_m: float) -> list[tuple[Area, float]]:
+    """Every geometry as the ground it stands for."""
+    points: Rated = []
+    areas: list[tuple[Area, float]] = []
+    for geometry, rate in rated:
+        if geometry.geom_type in ("Point", "MultiPoint"):
+            points += [(one, rate) for one in shapely.get_parts(geometry)]
+        elif geometry.geom_type in ("LineString", "MultiLineString"):
+            areas.append((shapely.buffer(geometry, width_m / 2, cap_style="flat"), rate))
+        else:
+            valid = geometry.is_valid
+            areas.append(
+                (geometry if valid else shapely.make_valid(geometry, method="structure"), rate)
+            )
+    return areas + _point_areas(points, width_m)
+
+
+def _point_areas(points: Rated, width_m: float) -> list[tuple[Area, float]]:
+    """The ground nearest each logged point, no farther than the machine reached from it."""
+    if not points:
+        return []
+    places = shapely.get_coordinates([one for one, _ in points])
+    places, of_point = np.unique(places.round(2), axis=0, return_inverse=True)
+    counts = np.bincount(of_point.ravel())
+    rates = np.bincount(of_point.ravel(), weights=[rate for _, rate in points]) / counts
+    reach = REACH * max(width_m, _gap_m(places))
+    rounds = shapely.buffer(shapely.points(places), reach)
+    if len(places) > 1:
+        cells = shapely.voronoi_polygons(
+            shapely.multipoints(places), extend_to=shapely.box(*shapely.total_bounds(rounds)),
+            ordered=True,
+        )  # fmt: skip
+        rounds = shapely.intersection(shapely.get_parts(cells), rounds)
+    return list(zip(rounds.tolist(), rates.tolist(), strict=True))
+
+
+def _gap_m(places: np.ndarray) -> float:
+    """The usual distance from a point to the next, metres."""
+    from scipy.spatial import cKDTree
+
+    if len(places) == 1:
+        return 0.0
+    apart, _ = cKDTree(places).query(places, k=2)
+    return float(np.median(apart[:, 1]))
+
+
+def _in_field(
+    path: Path, areas: Sequence[tuple[Area, float]], field: Field
+) -> tuple[tuple[tuple[Area, float], ...], float]:
+    """What of the areas lies in the field, and the share of the field under them."""
+    shapely.prepare(field.boundary)
+    cut = shapely.intersection(np.array([area for area, _ in areas]), field.boundary)
+    kept = [
+        (part, rate) for part, (_, rate) in zip(cut.tolist(), areas, strict=True) if part.area > 0
+    ]
+    if not kept:
+        raise refuse("IN-ELSEWHERE", path, "none of the applied rates lies in the field")
+    covered = shapely.unary_union([part for part, _ in kept]).area / field.boundary.area
+    return tuple(kept), float(covered)
+
+
+def _notes(path: Path, without: int, share: float) -> tuple[Finding, ...]:
+    notes = []
+    if without:
+        what = f"{without} places without a rate are left out"
+        notes.append(finding("IN-APPLIED-BLANK", where=path.name, what=what))
+    if share < COVERED:
+        what = f"its rates cover {100 * share:.0f} % of the field; the rest counts as untreated"
+        notes.append(finding("IN-APPLIED-PART", where=path.name, what=what))
+    return tuple(notes)
 
 
 def _factor(path: Path, unit: str | None, boron_pct: float | None) -> float:

@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 from itertools import pairwise
 from pathlib import Path
 
-from schorl.errors import UsageProblem
+from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, finding
 from schorl.formats.change import write_change
 from schorl.formats.pack import read_pack
@@ -77,21 +77,34 @@ def _check_seasons(given: Given, seasons: Sequence[str]) -> None:
 
 
 def _season(folder: Path, season: str, given: Given, crs: str) -> SeasonPack:
-    pack = read_season(folder, crs=crs, applied=_applied(folder, season, given, crs))
-    return replace(pack, removed_kg_ha=_removed(pack, (given.yield_t_ha or {}).get(season)))
+    pack = read_season(folder, crs=crs)
+    applied, notes = _applied(folder, pack, given.applied.get(season), given)
+    removed = _removed(pack, (given.yield_t_ha or {}).get(season))
+    return replace(
+        pack, applied=applied, removed_kg_ha=removed, findings=(*pack.findings, *notes)
+    )  # fmt: skip
 
 
-def _applied(folder: Path, season: str, given: Given, crs: str) -> AppliedBoron | None:
-    path = given.applied.get(season)
+def _applied(
+    folder: Path, pack: SeasonPack, path: Path | None, given: Given
+) -> tuple[AppliedBoron | None, tuple[Finding, ...]]:
     if path is None:
-        return None
+        return None, ()
     reading = read_applied(
-        path, field=field_of(folder, crs=crs), on=None, column=given.column, unit=given.unit,
-        boron_pct=given.boron_pct, form="", this_season=False,
+        path, field=field_of(folder, crs=pack.crs), on=None, column=given.column, unit=given.unit,
+        boron_pct=given.boron_pct, form="", this_season=False, width_m=pack.working_width_m,
     )  # fmt: skip
     if reading.value is None:
-        raise UsageProblem(reading.findings)
-    return reading.value
+        raise Refusal([_as_option(one) for one in reading.findings])
+    return reading.value, reading.findings
+
+
+def _as_option(found: Finding) -> Finding:
+    """The finding with a way out on the command line, where the reader speaks of a job file."""
+    if found.code != "IN-UNIT":
+        return found
+    hint = 'say --applied-unit "kg B/ha", or "kg/ha" of product with --boron-pct'
+    return finding(found.code, where=found.where, what=found.what, hint=hint)
 
 
 def _removed(pack: SeasonPack, yield_t_ha: float | None) -> float | None:

@@ -16,7 +16,7 @@ from schorl.model.reading import Reading, SampleHints
 from schorl.model.record import Recognition
 from schorl.model.samples import SampleSet
 from schorl.model.settings import AppliedBoron, ExtraLayer, RunSettings
-from schorl.run.settings import Layers, default_notes, missing_facts, resolve
+from schorl.run.settings import DEFAULT_WIDTH_M, Layers, default_notes, missing_facts, resolve
 
 T = TypeVar("T")
 
@@ -160,11 +160,13 @@ def read_sample_set(job: Job, folder: Path, field: Field, notes: Notebook) -> Sa
 
 
 def _read_layers(job: Job, folder: Path, field: Field, notes: Notebook) -> Layers:
-    zoning = job.zoning
+    zoning, width = job.zoning, job.machine.working_width_m or DEFAULT_WIDTH_M
     kept, retired = _kept_zones(job, folder, field, notes)
     own = _areas(zoning.own_layer, folder, field, notes)
     return Layers(
-        applied=tuple(one for part in job.applied for one in _applied(part, folder, field, notes)),
+        applied=tuple(
+            one for part in job.applied for one in _applied(part, folder, field, notes, width)
+        ),
         kept=kept,
         retired_numbers=retired,
         own_layer=tuple((place + 1, area) for place, area in enumerate(own)),
@@ -210,7 +212,7 @@ def _kept_zones(
 
 
 def _applied(
-    part: AppliedPart, folder: Path, field: Field, notes: Notebook
+    part: AppliedPart, folder: Path, field: Field, notes: Notebook, width_m: float
 ) -> tuple[AppliedBoron, ...]:
     if part.pack:
         path = located(folder, part.pack, notes)
@@ -230,6 +232,7 @@ def _applied(
             boron_pct=part.boron_pct,
             form=part.form,
             this_season=part.this_season,
+            width_m=width_m,
         )
         one = notes.take(reading)
         return () if one is None else (one,)

@@ -37,10 +37,10 @@ def given_kg_ha(before: SeasonPack, zone: SeasonZone) -> float:
         return zone.boron_kg_ha
     if not applied.areas:
         return applied.kg_ha
-    held = 0.0
-    for area, rate in applied.areas:
-        held += shapely.intersection(area, zone.area).area * rate
-    return held / zone.area.area if zone.area.area else NAN
+    shapely.prepare(zone.area)
+    shared = shapely.area(shapely.intersection([area for area, _ in applied.areas], zone.area))
+    rates = [rate for _, rate in applied.areas]
+    return float(shared @ rates) / zone.area.area if zone.area.area else NAN
 
 
 def _balance(
