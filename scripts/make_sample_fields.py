@@ -130,7 +130,7 @@ def write_log(path: Path, soil: Soil, field: Polygon, place: np.ndarray) -> None
 
 
 def spread_kg_ha(soil: Soil, points: np.ndarray, place: np.ndarray) -> np.ndarray:
-    """Boron that was spread in 2025: more where the soil held less.
+    """Boron that was spread in 2025, not by the prescription: more where the soil held less.
 
     None on the old heap, and none where the hopper had run out.
     """
@@ -380,7 +380,7 @@ seed. Nothing was measured, and no place, person or farm is meant.
 
 | field | what it shows |
 |---|---|
-| long_acre | 50 ha with a pond, 60 grid samples in two seasons, granules; `spread_2025.geojson` logs what was really spread (the hopper ran empty in the north-west) |
+| long_acre | 50 ha with a pond, 60 grid samples in two seasons, granules; `spread_2025.geojson` logs what was really spread (rates by a map of the driver's own, and the hopper ran empty in the north-west) |
 | kiln_close | 12 zone composites joined to a zone layer by name, a spray on the soil |
 | marl_pit | a messy laboratory sheet: Latin-1, decimal comma, `<`, lb/acre, a preamble; leaf checks |
 """

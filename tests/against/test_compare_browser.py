@@ -49,7 +49,7 @@ def test_opens_without_script_request_or_complaint(opened, page_file):
 
 def test_layers_are_chosen_one_at_a_time(opened, page_file):
     page = opened(page_file)
-    keys = ["change", "before", "after", "moved"]
+    keys = ["change", "boron-before", "boron-after", "before", "after", "moved"]
     assert [b.get_attribute("value") for b in page.locator("input[name=show]").all()] == keys
     for key in keys:
         page.locator(f"#show-{key}").check(force=True)
@@ -72,7 +72,7 @@ def test_what_is_read_is_what_was_computed(opened, page_file, change):
         said = row.inner_text().split("\t")
         assert said[0] == str(zone.zone)
         assert said[3] == f"{zone.change:+.2f}"
-        assert said[6] == ("real" if zone.real else "noise")
+        assert said[4] == ("real" if zone.real else "noise")
     assert change.text in page.locator("main").inner_text().replace("\n", " ")
     assert "H360FD" in page.locator("#cautions").inner_text()
 
@@ -81,7 +81,7 @@ def test_phone_and_print(opened, page_file):
     page = opened(page_file, viewport={"width": 390, "height": 844}, is_mobile=True)
     assert page.evaluate("document.documentElement.scrollWidth") <= 390
     page.emulate_media(media="print")
-    assert page.locator(".card").count() == 4
+    assert page.locator(".card").count() == 6
     assert not page.locator(".choices").is_visible()
 
 

@@ -1,10 +1,11 @@
-"""Files of a comparison: change.tif, zones_moved.gpkg, sites to revisit, check strips, summary."""
+"""Files of a comparison: change.tif, zones_moved.gpkg, sites, check strips, note, summary."""
 
 from __future__ import annotations
 
 import csv
 import io
 import json
+import textwrap
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
@@ -12,6 +13,7 @@ from typing import Any
 import numpy as np
 import shapely
 
+from schorl.agronomy.cautions import cautions
 from schorl.formats.pack import sealed, write_json
 from schorl.formats.rasters import NODATA
 from schorl.formats.vectors import quoted, write_layers
@@ -21,6 +23,7 @@ from schorl.model.change import SeasonChange
 from schorl.model.change_summary import change_summary
 
 DECIMALS = 7
+LINE = 90  # characters of a line of the note
 
 
 def write_change(
@@ -53,6 +56,7 @@ def write_change(
         if change.change_map is not None:
             write_change_raster(beside / "change.tif", change)
         write_moved(beside / "zones_moved.gpkg", change)
+        (beside / "READ_ME.txt").write_bytes(change_note(change))
         (beside / "revisit_sites.csv").write_bytes(revisit_csv(change))
         (beside / "revisit_sites.geojson").write_bytes(revisit_geojson(change))
         (beside / "check_strips.geojson").write_bytes(strips_geojson(change))
@@ -125,15 +129,42 @@ def write_moved(path: Path, change: SeasonChange) -> None:
         for name, pack in (("before", change.before), ("after", change.after))
     }  # fmt: skip
     moved = change.moved.moved
-    if moved:
-        layers["moved"] = frame(
-            [
-                {"zone_before": one.before, "zone_after": one.after, "area_ha": one.area_ha}
-                for one in moved
-            ],
-            [one.area for one in moved], ["zone_before", "zone_after", "area_ha"],
-        )  # fmt: skip
+    layers["moved"] = frame(
+        [
+            {"zone_before": one.before, "zone_after": one.after, "area_ha": one.area_ha}
+            for one in moved
+        ],
+        [one.area for one in moved], ["zone_before", "zone_after", "area_ha"],
+    )  # fmt: skip
     write_layers(path, layers)
+
+
+def change_note(change: SeasonChange) -> bytes:
+    """What a person needs to know who has only the files: what they hold, units, cautions."""
+    before, after = change.before.season, change.after.season
+    raster = (
+        "bands: change of available boron (mg/kg), its standard deviation (mg/kg), and p adjusted "
+        "for the number of cells; where that is over 0.10 the change cannot be told from noise"
+        if change.change_map is not None
+        else f"not written: {change.no_map}"
+    )
+    files = (
+        ("compare.html", "the whole comparison; needs no network"),
+        ("change.tif", raster),
+        ("zones_moved.gpkg", f"layers before ({before}), after ({after}) and moved: ground that "
+                             "lies in another zone; each pack's own zone numbers"),
+        ("check_strips.geojson", "strips to leave untreated or to give double; boron_kg_ha is kg of "
+                                 "boron per hectare, one a zone: a proposal, not a prescription"),
+        ("revisit_sites.csv, .geojson", "sites to sample again; longitude and latitude (WGS 84)"),
+        ("summary.json", "every figure, unrounded"),
+    )  # fmt: skip
+    lines = [f"{change.after.field_name}: what changed from {before} to {after}", ""]
+    for name, said in files:
+        lines += textwrap.wrap(f"{name}: {said}", LINE, subsequent_indent="  ")
+    lines += ["", *textwrap.wrap(change.text, LINE), ""]
+    for one in cautions():
+        lines += textwrap.wrap(one, LINE, subsequent_indent="  ")
+    return ("\n".join(lines) + "\n").encode("utf-8")
 
 
 def revisit_csv(change: SeasonChange) -> bytes:

@@ -225,6 +225,9 @@ def read_pack(folder: Path) -> PackContents:
         )  # fmt: skip
     except SchorlError:
         raise
+    except FileNotFoundError as reason:
+        what = f"not a pack: there is no {Path(reason.filename or folder).name} in it"
+        raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)]) from None
     except Exception as reason:  # a folder that is not a pack fails in many ways
         what = f"not a pack that can be read: {type(reason).__name__}: {reason}"
         raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)]) from None

@@ -88,6 +88,8 @@ def _verify_pack(folder: Path, outline: Any) -> tuple[list[Fault], dict[str, Any
     faults += _manifest_faults(folder, manifest)
     if any(fault.file == "summary.json" for fault in faults):
         return faults, summary  # what was recorded is not known
+    if "seasons" in summary:  # a comparison holds no rates
+        return faults + _raster_faults_in(folder, "change.tif"), summary
     held = outline
     package = folder / "prescription.gpkg"
     if held is None and package.exists():
@@ -100,10 +102,13 @@ def _verify_pack(folder: Path, outline: Any) -> tuple[list[Fault], dict[str, Any
             faults += cell_faults(name, read, held, summary, zones)
         else:
             faults += zone_faults(name, read, held, summary)
-    for raster in sorted((folder / "surfaces").glob("*.tif")):
-        faults += _raster_faults(raster)
+    faults += _raster_faults_in(folder, "surfaces/*.tif")
     faults += _total_faults(summary)
     return faults, summary
+
+
+def _raster_faults_in(folder: Path, names: str) -> list[Fault]:
+    return [fault for one in sorted(folder.glob(names)) for fault in _raster_faults(one)]
 
 
 def _zone_files(folder: Path) -> list[Path]:

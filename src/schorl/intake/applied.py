@@ -69,10 +69,11 @@ def read_applied(
 def _rows(path: Path, column: str, crs: str) -> tuple[Rated, int]:
     """Geometries in metres with their figures, and how many features had no figure."""
     features = read_features(path, layer=None, crs=None, option="samples")
-    wanted, rows, without = plain_words(column), [], 0
+    wanted, without = plain_words(column), 0
+    rows: Rated = []
     for geometry, attributes in zip(features.geometries, features.attributes, strict=True):
-        found = [v for key, v in attributes.items() if plain_words(key) == wanted]
-        if geometry is None or not found or not _is_figure(found[0]):
+        found = [_figure(v) for key, v in attributes.items() if plain_words(key) == wanted]
+        if geometry is None or not found or found[0] is None:
             without += 1
             continue
         rows.append((transform_geometry(geometry, source=features.crs, target=crs), found[0]))
@@ -83,8 +84,10 @@ def _rows(path: Path, column: str, crs: str) -> tuple[Rated, int]:
     return rows, without
 
 
-def _is_figure(value: object) -> bool:
-    return isinstance(value, int | float) and not isinstance(value, bool) and math.isfinite(value)
+def _figure(value: object) -> float | None:
+    if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
+        return None
+    return float(value)
 
 
 def _as_areas(rated: Rated, width_m: float) -> list[tuple[Area, float]]:

@@ -48,6 +48,7 @@ def _season(pack: SeasonPack) -> dict[str, Any]:
         "samples": len(pack.samples),
         "zones": len(pack.zones),
         "manifest_sha256": pack.identity,
+        "applied_from": pack.applied.source if pack.applied else None,
     }
 
 

@@ -6,40 +6,19 @@ Layers are chosen by style rules alone; the page needs no script.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from itertools import pairwise
 
-import numpy as np
-
-from schorl.model.change import ChangeMap, SeasonChange, SeasonPack
-from schorl.report import map_svg, scales
+from schorl.model.change import SeasonChange
+from schorl.report import map_svg
+from schorl.report.change_layers import Layer, Row, layers_of_change
 from schorl.report.charts import swatch
-from schorl.report.map_svg import FONT, Sheet
+from schorl.report.map_svg import Sheet
 from schorl.report.markup import Safe, join, shape, tag
-from schorl.report.png import cells_png
-from schorl.report.scales import Scale
-from schorl.report.shown import figure
-
-CLASSES = 7
-MOVED = "#b85c28"
-Row = tuple[str, str]
-
-
-def change_scale(mapped: ChangeMap) -> Scale:
-    """Seven classes about no change, of one round width."""
-    largest = float(np.quantile(np.abs(mapped.change_mg_kg), 0.98))
-    step = scales.round_step(2 * largest / CLASSES)
-    breaks = tuple(round((place - 2.5) * step, 9) for place in range(CLASSES - 1))
-    places = 2 if step >= 0.02 else 3
-    said = [f"{value:+.{places}f}" for value in breaks]
-    labels = [f"under {said[0]}"]
-    labels += [f"{low} to {high}" for low, high in pairwise(said)]
-    return Scale(breaks, scales.CHANGE, (*labels, f"{said[-1]} and over"))
 
 
 def change_map_part(change: SeasonChange) -> tuple[Safe, str]:
     """The map's markup and the style rules that show its layers."""
     sheet = map_svg.sheet_of(change.common)
-    layers = _layers(change, sheet)
+    layers = layers_of_change(change, sheet)
     keys = [key for key, *_ in layers]
     choices = [
         _choice(key, name, checked=place == 0) for place, (key, name, *_) in enumerate(layers)
@@ -55,118 +34,6 @@ def change_map_part(change: SeasonChange) -> tuple[Safe, str]:
         class_="fieldmap", id="map",
     )  # fmt: skip
     return join([body, _atlas(layers, sheet)]), _rules(keys)
-
-
-Layer = tuple[str, str, Safe, str, list[Row], str]
-
-
-def _layers(change: SeasonChange, sheet: Sheet) -> list[Layer]:
-    """Key, name, drawing, legend's title, rows and note of every layer there is."""
-    layers: list[Layer] = []
-    if change.change_map is not None:
-        layers.append(_change_layer(change, change.change_map, sheet))
-    both = sorted(
-        {zone.boron_kg_ha for pack in (change.before, change.after) for zone in pack.zones}
-    )
-    for key, pack in (("before", change.before), ("after", change.after)):
-        layers.append(_rate_layer(key, pack, both, sheet))
-    layers.append(_moved_layer(change, sheet))
-    return layers
-
-
-def _change_layer(change: SeasonChange, mapped: ChangeMap, sheet: Sheet) -> Layer:
-    scale, grid = change_scale(mapped), mapped.grid
-    x, y = sheet.place(grid.west_m - grid.cell_m, grid.north_m + grid.cell_m)
-    picture = shape("image", {
-        "x": f"{x:.1f}", "y": f"{y:.1f}", "preserveAspectRatio": "none", "class": "cells",
-        "width": f"{(grid.cols + 2) * grid.cell_m:.1f}",
-        "height": f"{(grid.rows + 2) * grid.cell_m:.1f}",
-        "href": cells_png(grid, scale.classes(mapped.change_mg_kg), scale.colours),
-    })  # fmt: skip
-    noise = map_svg.cell_runs(grid, (~mapped.real).astype(np.intp), sheet)
-    cover = shape("path", {"d": noise, "fill": "url(#noise)", "clip-path": "url(#cut)"})
-    picture = shape("g", {"clip-path": "url(#cut)"}, picture)
-    drawn = join([picture, cover, _real_zones(change, sheet)])
-    rows = list(zip(scale.colours, scale.labels, strict=True))
-    real = (
-        f"{mapped.real_ha:.1f} ha stand out from noise"
-        if mapped.real.any()
-        else ("no cell stands out from noise")
-    )
-    note = (
-        f"Change at the sites sampled in both seasons, kriged. Where it is hatched it cannot be "
-        f"told from noise: {real} (false discoveries held to 10 %). A zone whose mean change is "
-        "real has a bold outline, whatever its cells can show one by one."
-    )
-    return "change", "Change of boron", drawn, "Change of boron, mg/kg", rows, note
-
-
-def _real_zones(change: SeasonChange, sheet: Sheet) -> Safe:
-    """Zones whose mean change is real: a bold outline, and the change written in."""
-    earlier = min(change.before, change.after, key=lambda one: one.when)
-    areas = {zone.number: zone.area for zone in earlier.zones}
-    size, drawn = FONT * sheet.side_m * 1.15, []
-    for one in change.zones:
-        if not one.real:
-            continue
-        path = map_svg.path_of(areas[one.zone], sheet)
-        for colour, width in (("#fff", 110), ("#111", 190)):
-            line = {"stroke": colour, "stroke-width": f"{sheet.side_m / width:.2f}"}
-            drawn.append(shape("path", {"d": path, "fill": "none"} | line))
-        for east, north in map_svg.label_places(areas[one.zone], least_radius_m=2 * size):
-            x, y = sheet.place(east, north)
-            said = f"{one.zone}: {one.change:+.2f}"
-            drawn.append(map_svg.words_at(x, y, said, size=size, colour="#111", halo="#fff"))
-    return join(drawn)
-
-
-def _rate_layer(key: str, pack: SeasonPack, rates: Sequence[float], sheet: Sheet) -> Layer:
-    given = [one for one in rates if one > 0]
-    picked = scales.spread_over(scales.RATES[1:], len(given)) if given else ()
-    colours = {0.0: scales.NOTHING} | dict(zip(given, picked, strict=True))
-    fills = [
-        shape("path", {
-            "d": map_svg.path_of(zone.area, sheet), "fill": colours[zone.boron_kg_ha],
-            "fill-rule": "evenodd", "stroke": "#111", "stroke-width": f"{sheet.side_m / 500:.2f}",
-            "class": "thin",
-        })
-        for zone in pack.zones
-    ]  # fmt: skip
-    size = FONT * sheet.side_m * 1.15
-    labels = []
-    for zone in pack.zones:
-        ink = scales.ink_on(colours[zone.boron_kg_ha])
-        halo = colours[zone.boron_kg_ha] if ink == "#ffffff" else "#ffffff"
-        said = f"{zone.number}: {figure(zone.boron_kg_ha, 2)}"
-        for east, north in map_svg.label_places(zone.area, least_radius_m=1.6 * size):
-            x, y = sheet.place(east, north)
-            labels.append(map_svg.words_at(x, y, said, size=size, colour=ink, halo=halo))
-    own = sorted({zone.boron_kg_ha for zone in pack.zones})
-    rows = [(colours[one], f"{figure(one, 2)}" if one else "0, untreated") for one in own]
-    name = f"Rates {pack.season}"
-    note = "Zone number and boron rate stand in the zone."
-    return key, name, join([*fills, *labels]), f"Boron in {pack.season}, kg/ha", rows, note
-
-
-def _moved_layer(change: SeasonChange, sheet: Sheet) -> Layer:
-    drawn = [
-        shape("path", {
-            "d": map_svg.path_of(one.area, sheet), "fill": MOVED, "fill-rule": "evenodd",
-        })
-        for one in change.moved.moved
-    ]  # fmt: skip
-    for pack, dash in ((change.before, f"{sheet.side_m / 90:.1f}"), (change.after, None)):
-        for zone in pack.zones:
-            drawn.append(
-                shape("path", {
-                    "d": map_svg.path_of(zone.area, sheet), "fill": "none", "stroke": "#111",
-                    "stroke-width": f"{sheet.side_m / 420:.2f}", "stroke-dasharray": dash,
-                    "class": "thin",
-                })
-            )  # fmt: skip
-    rows = [(MOVED, f"in another zone than before: {change.moved.moved_ha:.1f} ha")]
-    note = f"Dashed: outlines of {change.before.season}. Full: outlines of {change.after.season}."
-    return "moved", "Zones that moved", join(drawn), "Ground that changed its zone", rows, note
 
 
 def _svg(change: SeasonChange, sheet: Sheet, layers: Sequence[Layer]) -> Safe:

@@ -34,11 +34,11 @@ def verdict(one: ZoneChange) -> str:
 
 
 def zone_rows(change: SeasonChange) -> list[list[str]]:
-    """One row a zone: means, change, interval, adjusted p, verdict, least change that would show."""
+    """One row a zone: means, change, verdict, interval, adjusted p, least change that would show."""
     return [
         [
             str(one.zone), figure(one.before, 2), figure(one.after, 2), signed(one.change),
-            interval(one.low, one.high), _p(one.p_adjusted), verdict(one),
+            verdict(one), interval(one.low, one.high), _p(one.p_adjusted),
             figure(one.least_detectable, 2), f"{one.samples}, {one.test}",
         ]
         for one in change.zones
@@ -52,10 +52,12 @@ def _p(value: float) -> str:
 
 
 def balance_rows(change: SeasonChange) -> list[list[str]]:
-    """One row a zone: given, taken away, change in the soil, apparent recovery."""
+    """One row a zone: prescribed, given, taken away, change in the soil, apparent recovery."""
+    earlier = min((change.before, change.after), key=lambda one: one.when)
+    prescribed = {zone.number: zone.boron_kg_ha for zone in earlier.zones}
     return [
         [
-            str(one.zone), figure(one.applied, 2), figure(one.removed, 2), signed(one.change),
+            str(one.zone), figure(prescribed[one.zone], 2), figure(one.applied, 2), figure(one.removed, 2), signed(one.change),
             interval(one.change_low, one.change_high), percent_of(one.recovery),
             _share_interval(one.recovery_low, one.recovery_high),
         ]
@@ -101,7 +103,7 @@ def change_table(change: SeasonChange) -> str:
         lines += ["", layout.format("zone", "before", "after", "change", "95 %", "p", "it is")]
         lines += [
             layout.format(zone, before, after, moved, held, p, said).rstrip()
-            for zone, before, after, moved, held, p, said, *_ in zone_rows(change)
+            for zone, before, after, moved, said, held, p, *_ in zone_rows(change)
         ]
         lines.append("boron in mg/kg; p by Holm's correction over the zones")
     return "\n".join(lines)

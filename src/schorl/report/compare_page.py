@@ -119,7 +119,7 @@ def _care(change: SeasonChange) -> Safe:
 def _zones(change: SeasonChange) -> Safe:
     if not change.zones:
         return section("changes", "Zones", tag("p", change.refused or "No zone can be tested."))
-    head = ["Zone", "Then, mg/kg", "Now, mg/kg", "Change", "95 %", "p", "It is", "Would show",
+    head = ["Zone", "Then, mg/kg", "Now, mg/kg", "Change", "It is", "95 %", "p", "Would show",
             "Samples"]  # fmt: skip
     said = (
         f"Zones of {_drawn_in(change)}. Real: the adjusted p is 0.05 or less. Would show: the "
@@ -151,10 +151,9 @@ def _shift(change: SeasonChange) -> Safe:
         "Within what soil can do: a shift of the whole campaign is called out above 20 % of the "
         "mean and one standard deviation."
     )
-    rows = [[name, tag("span", value)] for name, value in rows]
+    told = [tag("div", tag("dt", name), tag("dd", value)) for name, value in rows]
     return section(
-        "shift", "Whole field", table(["Figure", "Value"], rows, caption="Shift of the field"),
-        tag("p", note),
+        "shift", "Whole field", tag("dl", *told, class_="settings"), tag("p", note)
     )  # fmt: skip
 
 
@@ -189,7 +188,7 @@ def _moved(change: SeasonChange) -> Safe:
 
 
 def _balance(change: SeasonChange) -> Safe:
-    head = ["Zone", "Given, kg/ha", "Taken away", "Change in the soil", "95 %", "Shown again",
+    head = ["Zone", "Prescribed, kg/ha", "Given", "Taken away", "Change in the soil", "95 %", "Shown again",
             "95 %"]  # fmt: skip
     said = (
         "Shown again: change in the test times the mass of soil, with what the crop took away, over "
@@ -197,25 +196,46 @@ def _balance(change: SeasonChange) -> Safe:
         "the field's own figure next season; nothing takes it over by itself."
     )
     return section(
-        "balance", "What the boron did",
+        "balance", "What the boron did", tag("p", _given(change)),
         table(head, balance_rows(change), caption="Boron balance of each zone"),
         tag("p", said, class_="soft"),
     )  # fmt: skip
+
+
+def _given(change: SeasonChange) -> str:
+    """Where the boron that counts as given is known from."""
+    earlier = min((change.before, change.after), key=lambda one: one.when)
+    if earlier.applied is None:
+        return f"Boron of {earlier.season} counts as given as it was prescribed."
+    source = earlier.applied.source or "the figure given"
+    return f"Boron given in {earlier.season} is that of {source}, not that prescribed."
 
 
 def _next(change: SeasonChange) -> Safe:
     strips = [tag("li", tag("b", f"{one.kind.capitalize()}: "), one.said) for one in change.strips]
     if not strips:
         strips = [tag("li", "There is no room for check strips across two treated zones.")]
-    rows = [[one.name, str(one.zone), one.why] for one in change.revisit]
     return section(
         "next", "Next season",
         tag("h3", "Check strips"), tag("ul", *strips),
         tag("p", "The label, local codes and the crop's own limits hold in a strip as elsewhere.",
             class_="soft"),
-        tag("h3", f"{len(rows)} sites to sample again"),
-        table(["Site", "Zone", "Why"], rows, caption="Sites to sample again"),
+        tag("h3", f"{len(change.revisit)} sites to sample again"),
+        tag("p", "The first of each zone is the one nearest its middle, each next the one farthest "
+                 "from those before it: take them in this order. Their places are in "
+                 "revisit_sites.csv and .geojson."),
+        tag("ul", *_sites(change)),
     )  # fmt: skip
+
+
+def _sites(change: SeasonChange) -> list[Safe]:
+    """One item a zone: its sites in the order they were chosen."""
+    of_zone: dict[int, list[str]] = {}
+    for one in change.revisit:
+        of_zone.setdefault(one.zone, []).append(one.name)
+    return [
+        tag("li", tag("b", f"Zone {zone}: "), ", ".join(names)) for zone, names in of_zone.items()
+    ]
 
 
 def _findings(change: SeasonChange) -> Safe:

@@ -344,7 +344,9 @@ def _spread(one: AppliedBoron, grid: CellGrid) -> Floats:
     tree = shapely.STRtree([area for area, _ in one.areas])
     cell, area = tree.query(shapely.points(grid.centres_m), predicate="within")
     rates = np.array([rate for _, rate in one.areas])
-    return np.bincount(cell, weights=rates[area], minlength=grid.n_cells)
+    given = np.zeros(grid.n_cells)
+    np.add.at(given, cell, rates[area])
+    return given
 
 
 def _share_left(one: AppliedBoron, sampled: date | None, soil: Soil) -> Floats:

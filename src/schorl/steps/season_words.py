@@ -6,6 +6,9 @@ import numpy as np
 
 from schorl.model.change import SeasonChange, ZoneChange
 
+#: Less ground than this in another zone is drawing, not moving.
+LEAST_MOVED_HA = 0.01
+
 
 def in_words(change: SeasonChange) -> str:
     """One paragraph: the field, the zones, the boron given, and what to do next."""
@@ -73,7 +76,7 @@ def _zone(one: ZoneChange) -> str:
 
 def _ground(change: SeasonChange) -> str:
     moved = change.moved
-    if moved.moved_ha < 0.01:
+    if moved.moved_ha < LEAST_MOVED_HA:
         return "The zones lie where they lay."
     share = per_cent(moved.moved_ha / change.common_ha)
     said = f"{moved.moved_ha:.1f} ha ({share}) lie in another zone than before"
@@ -99,7 +102,9 @@ def _recovery(change: SeasonChange) -> str:
                 f"zone {one.zone}: {per_cent(one.recovery)} ({100 * one.recovery_low:.0f} to "
                 f"{per_cent(one.recovery_high)})"
             )
-    return "Of the boron given, the next test shows: " + "; ".join(said) + "."
+    earlier = min((change.before, change.after), key=lambda one: one.when)
+    given = "prescribed" if earlier.applied is None else "logged as given"
+    return f"Of the boron {given}, the next test shows: " + "; ".join(said) + "."
 
 
 def _next(change: SeasonChange) -> str:
@@ -110,12 +115,22 @@ def _next(change: SeasonChange) -> str:
             "To do: have kept samples of the earlier season analysed again beside new ones before "
             "any rate is changed on this."
         )
-    said = "To do: keep the zones and renew their rates"
+    said = f"To do: {_zones_next(change)}"
     if change.strips:
         said += f"; leave {_strips(change)} so that next season can tell what the boron did"
     if change.revisit:
         said += f"; sample the {len(change.revisit)} listed sites again"
     return said + "."
+
+
+def _zones_next(change: SeasonChange) -> str:
+    """Whether last season's zones still serve: they do until a zone has really changed."""
+    earlier, later = sorted((change.before, change.after), key=lambda one: one.when)
+    if not any(one.real for one in change.zones):
+        return f"keep the zones of {earlier.season} and renew their rates"
+    if change.moved.moved_ha < LEAST_MOVED_HA:
+        return "draw the zones anew, since some really changed"
+    return f"go on with the zones of {later.season}, since some zones really changed"
 
 
 def _strips(change: SeasonChange) -> str:
