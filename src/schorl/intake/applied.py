@@ -127,13 +127,13 @@ def _point_areas(points: Rated, width_m: float) -> list[tuple[Area, float]]:
 
 
 def _gap_m(places: np.ndarray) -> float:
-    """The usual distance from a point to the next, metres."""
+    """The usual distance to the fourth nearest point, metres: along and across a sparse log."""
     from scipy.spatial import cKDTree
 
     if len(places) == 1:
         return 0.0
-    apart, _ = cKDTree(places).query(places, k=2)
-    return float(np.median(apart[:, 1]))
+    apart, _ = cKDTree(places).query(places, k=min(5, len(places)))
+    return float(np.median(apart[:, -1]))
 
 
 def _in_field(
