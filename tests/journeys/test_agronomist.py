@@ -11,7 +11,10 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import shapely
 
+from schorl.formats.season import read_season
+from schorl.geodesy import area_ha
 from support.command import FIELDS, run
 
 OUTLINE = FIELDS / "long_acre/2026/boundary.geojson"
@@ -171,6 +174,76 @@ def test_what_was_really_given_counts(packs, tmp_path):
         "--applied", f"2019={given}",
     )  # fmt: skip
     assert code == 2
+
+
+def test_the_spreader_log_of_the_sample_field_tells_its_story(packs, tmp_path):
+    """The hopper ran empty in the north-west: no gain there, and half of what fell shows again.
+
+    The sample field is made so (scripts/make_sample_fields.py); zone 1 lies partly in that corner.
+    """
+    code, answer = run(
+        "compare", packs / "Long-Acre-2025", packs / "Long-Acre-2026", "--out", tmp_path,
+        "--applied", f"2025={FIELDS / 'long_acre/2026/spread_2025.geojson'}",
+        "--applied-column", "product_kg_ha", "--applied-unit", "kg/ha", "--boron-pct", "10",
+    )  # fmt: skip
+    assert code == 0, answer["findings"]
+    result = answer["result"]
+    assert result["seasons"][0]["applied_from"] == "spread_2025.geojson"
+    prescribed = json.loads((packs / "Long-Acre-2025/summary.json").read_text("utf-8"))["zones"]
+    first = result["balance"][0]
+    assert first["applied"] < 0.75 * prescribed[0]["boron_kg_ha"]
+    for row in result["balance"]:
+        if row["recovery"] is not None:
+            assert row["recovery_low"] < 0.5 < row["recovery_high"]  # the share it was made with
+    import rasterio
+
+    with rasterio.open(Path(result["written"]["folder"]) / "change.tif") as raster:
+        change, p = raster.read(1, masked=True), raster.read(3, masked=True)
+    rows, cols = change.shape
+    corner = (slice(0, rows // 3), slice(0, cols // 4))
+    assert change[corner].mean() < 0.5 * change.mean()
+    assert not (p[corner] <= 0.10).any()
+    assert 5 < result["change_map"]["real_ha"] < 0.6 * result["common_ha"]
+
+
+def test_a_smaller_field_is_compared_on_the_common_ground(packs, tmp_path):
+    """A strip in the north was given up, with the sites in it."""
+    job = tmp_path / "job"
+    shutil.copytree(FIELDS / "long_acre/2026", job)
+    outline = json.loads((job / "boundary.geojson").read_text("utf-8"))
+    (feature,) = outline["features"]
+    whole = shapely.geometry.shape(feature["geometry"])
+    west, south, east, north = whole.bounds
+    less = whole.intersection(shapely.box(west, south, east, north - 0.2 * (north - south)))
+    feature["geometry"] = shapely.geometry.mapping(less)
+    (job / "boundary.geojson").write_text(json.dumps(outline), encoding="utf-8")
+    head, *rows = (job / "soil.csv").read_text("utf-8").splitlines()
+    kept = [row for row in rows if less.covers(shapely.Point(*map(float, row.split(",")[1:3])))]
+    (job / "soil.csv").write_text("\n".join([head, *kept]) + "\n", encoding="utf-8")
+    code, answer = run("prescribe", job, "--season", "2026-smaller", "--out", tmp_path)
+    assert code == 0, answer["findings"]
+    code, answer = run("compare", packs / "Long-Acre-2025", tmp_path / "Long-Acre-2026-smaller",
+                       "--out", tmp_path)  # fmt: skip
+    result = answer["result"]
+    assert code == 0, answer["findings"]
+    assert "SEASON-AREA" in {one["code"] for one in answer["findings"]}
+    assert result["common_ha"] < 50
+    table = np.array(result["zones_matched"]["transition_ha"])
+    assert table.sum() == pytest.approx(result["common_ha"], rel=2e-3)
+    assert result["sites_in_both"] == len(kept)
+
+
+def test_a_pack_in_another_metric_system_is_the_same_season(packs):
+    own = read_season(packs / "Long-Acre-2025")
+    moved = read_season(packs / "Long-Acre-2025", crs="EPSG:32632")
+    assert moved.crs == "EPSG:32632"
+    np.testing.assert_array_equal(
+        moved.samples.properties["boron"].values, own.samples.properties["boron"].values
+    )
+    for zone, other in zip(own.zones, moved.zones, strict=True):
+        assert area_ha(other.area, crs=moved.crs) == pytest.approx(zone.area_ha, rel=1e-4)
+    assert moved.surfaces["boron"].mean() == pytest.approx(own.surfaces["boron"].mean(), rel=0.01)
+    assert read_season(packs / "Long-Acre-2025").identity == own.identity
 
 
 def test_three_seasons_in_a_row(packs, tmp_path):
