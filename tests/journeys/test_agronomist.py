@@ -241,7 +241,7 @@ def test_a_pack_in_another_metric_system_is_the_same_season(packs):
         moved.samples.properties["boron"].values, own.samples.properties["boron"].values
     )
     for zone, other in zip(own.zones, moved.zones, strict=True):
-        assert area_ha(other.area, crs=moved.crs) == pytest.approx(zone.area_ha, rel=1e-4)
+        assert area_ha(other.area, crs=moved.crs) == pytest.approx(zone.area_ha, rel=1e-3)
     assert moved.surfaces["boron"].mean() == pytest.approx(own.surfaces["boron"].mean(), rel=0.01)
     assert read_season(packs / "Long-Acre-2025").identity == own.identity
 
