@@ -15,7 +15,7 @@ import shapely
 
 from schorl.formats.season import read_season
 from schorl.geodesy import area_ha
-from support.command import FIELDS, run
+from support.command import FIELDS, prescribed, run
 
 OUTLINE = FIELDS / "long_acre/2026/boundary.geojson"
 
@@ -24,8 +24,7 @@ OUTLINE = FIELDS / "long_acre/2026/boundary.geojson"
 def packs(tmp_path_factory):
     folder = tmp_path_factory.mktemp("packs")
     for season in ("2025", "2026"):
-        code, answer = run("prescribe", FIELDS / "long_acre" / season, "--out", folder)
-        assert code == 0, answer["findings"]
+        prescribed(f"long_acre/{season}", folder)
     return folder
 
 

@@ -10,18 +10,14 @@ import numpy as np
 import pytest
 import shapefile as pyshp
 
-from support.command import FIELDS, run
+from support.command import FIELDS, prescribed, run
 
 LB_ACRE = 1.120851  # kg/ha, NIST SP 811 (1 lb = 0.45359237 kg, 1 acre = 0.40468564224 ha)
 
 
 @pytest.fixture(scope="module")
 def pack(tmp_path_factory):
-    code, answer = run(
-        "prescribe", FIELDS / "long_acre/2026", "--out", tmp_path_factory.mktemp("packs")
-    )
-    assert code == 0, answer["findings"]
-    return Path(answer["result"]["pack"]["folder"])
+    return prescribed("long_acre/2026", tmp_path_factory.mktemp("packs"))
 
 
 def rates(result):

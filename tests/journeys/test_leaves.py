@@ -7,7 +7,7 @@ from pathlib import Path
 
 import pytest
 
-from support.command import FIELDS, run
+from support.command import FIELDS, prescribed, run
 
 LEAVES = FIELDS / "marl_pit/2026/leaves.csv"
 RANGE = ("--range", "alfalfa top", "--boron-g-l", "150")
@@ -15,11 +15,7 @@ RANGE = ("--range", "alfalfa top", "--boron-g-l", "150")
 
 @pytest.fixture(scope="module")
 def pack(tmp_path_factory):
-    code, answer = run(
-        "prescribe", FIELDS / "marl_pit/2026", "--out", tmp_path_factory.mktemp("packs")
-    )
-    assert code == 0, answer["findings"]
-    return Path(answer["result"]["pack"]["folder"])
+    return prescribed("marl_pit/2026", tmp_path_factory.mktemp("packs"))
 
 
 def zones_of(folder):

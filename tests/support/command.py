@@ -16,3 +16,10 @@ def run(*arguments):
     done = subprocess.run(command, capture_output=True, text=True, encoding="utf-8", check=False)
     assert "Traceback" not in done.stderr
     return done.returncode, json.loads(done.stdout)
+
+
+def prescribed(job: str, folder: Path) -> Path:
+    """The pack of a sample field's job, written into a folder."""
+    code, answer = run("prescribe", FIELDS / job, "--out", folder)
+    assert code == 0, answer["findings"]
+    return Path(answer["result"]["pack"]["folder"])

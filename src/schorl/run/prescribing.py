@@ -12,15 +12,18 @@ from schorl import __version__
 from schorl.errors import Refusal
 from schorl.findings import Finding, errors_among, finding
 from schorl.model.arrays import Counts
-from schorl.model.field import Field, lay_grid
+from schorl.model.field import CellGrid, Field, lay_grid
 from schorl.model.prescription import PlanOutcome
 from schorl.model.progress import Progress, silent
 from schorl.model.record import RunRecord
-from schorl.model.settings import Override
+from schorl.model.settings import Override, RunSettings
 from schorl.run.inputs import Inputs
 
 if TYPE_CHECKING:
     from schorl.formats.pack import PackWritten
+    from schorl.steps.assessing import Assessed
+    from schorl.steps.mapping import Mapped
+    from schorl.steps.zoning import Zoned
 
 LIBRARIES = (
     "numpy",
@@ -59,8 +62,7 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
     """
     from schorl.steps.interpretations import other_readings
     from schorl.steps.mapping import map_surfaces
-    from schorl.steps.rating import assess_cells, plan_outcome, prescribe_rates
-    from schorl.steps.zoning import draw_zones
+    from schorl.steps.rating import assess_cells, prescribe_rates
 
     settings, samples, field = inputs.settings, inputs.samples, inputs.field
     found = list(inputs.findings)
@@ -71,34 +73,13 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
     _keep(found, mapped.findings)
     assessed = assess_cells(samples, mapped.surfaces, grid, settings)
     _keep(found, assessed.findings)
-    cell_ha = field.area_ha / grid.n_cells
-
-    def outcome(labels: Counts) -> PlanOutcome:
-        return plan_outcome(labels, assessed.need, settings, cell_ha=cell_ha)
-
-    zoned = draw_zones(
-        field,
-        grid,
-        samples,
-        mapped.surfaces,
-        assessed.need,
-        sample_need_kg_ha=assessed.sample_need_kg_ha,
-        outcome=outcome,
-        settings=settings,
-        seed=settings.seed,
-        progress=progress,
-    )
+    zoned = _zones(inputs, grid, mapped, assessed, settings, progress=progress)
     _keep(found, zoned.findings)
     rated = prescribe_rates(zoned.zone_map, assessed, samples, mapped.surfaces, grid, settings)
     _keep(found, rated.findings)
-    given = {rate.zone: rate.boron_kg_ha for rate in rated.prescription.rates}
-    found.extend(
-        other_readings(
-            zoned.zone_map, given, samples, mapped.surfaces, grid,
-            replace(settings, machine=rated.machine),
-        )
-    )  # fmt: skip
     settings = replace(settings, machine=rated.machine)
+    given = {rate.zone: rate.boron_kg_ha for rate in rated.prescription.rates}
+    found.extend(other_readings(zoned.zone_map, given, samples, mapped.surfaces, grid, settings))
     found.extend(_override_notes(settings.overrides))
     record = RunRecord(
         field=field,
@@ -115,6 +96,31 @@ def survey(inputs: Inputs, *, progress: Progress = silent) -> RunRecord:
         versions=versions(),
     )
     return _fitted(record)
+
+
+def _zones(
+    inputs: Inputs,
+    grid: CellGrid,
+    mapped: Mapped,
+    assessed: Assessed,
+    settings: RunSettings,
+    *,
+    progress: Progress,
+) -> Zoned:
+    """Zones for the assessed cells; each plan is judged by what it would do under every limit."""
+    from schorl.steps.rating import plan_outcome
+    from schorl.steps.zoning import draw_zones
+
+    cell_ha = inputs.field.area_ha / grid.n_cells
+
+    def outcome(labels: Counts) -> PlanOutcome:
+        return plan_outcome(labels, assessed.need, settings, cell_ha=cell_ha)
+
+    return draw_zones(
+        inputs.field, grid, inputs.samples, mapped.surfaces, assessed.need,
+        sample_need_kg_ha=assessed.sample_need_kg_ha, outcome=outcome, settings=settings,
+        seed=settings.seed, progress=progress,
+    )  # fmt: skip
 
 
 def _fitted(record: RunRecord) -> RunRecord:

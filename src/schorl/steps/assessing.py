@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from datetime import date
 
 import numpy as np
 import shapely
@@ -27,9 +26,10 @@ from schorl.model.arrays import Flags, Floats
 from schorl.model.field import CellGrid
 from schorl.model.prescription import CellNeed
 from schorl.model.samples import SampleSet
-from schorl.model.settings import AppliedBoron, RunSettings
+from schorl.model.settings import RunSettings
 from schorl.model.sourced import UNSURE
 from schorl.model.surface import Surface
+from schorl.steps.given import boron_given
 from schorl.steps.limits_of_soil import (
     ceiling_for,
     class_limits_fit,
@@ -38,8 +38,6 @@ from schorl.steps.limits_of_soil import (
     target_for,
     uses_class_table,
 )
-
-G_PER_HA_FROM_MM = 10.0  # 1 mg/L x 1 mm = 10 g/ha, arithmetic
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -247,7 +245,7 @@ def _need(
     top = ceiling_depth_cm(settings.crop.incorporation_cm)
     log = boron.transform == "log"
     spread = _with_target_spread(boron, surfaces, crop, settings, soil, target)
-    credit, used = _credits(samples, grid, settings, soil)
+    credit, used = boron_given(samples, grid, settings, soil.clay_pct)
     cap = rate_cap(crop, settings.placement, settings.overrides).kg_ha
     most = min(cap, absolute_limit_kg_ha(crop, settings.overrides))
     kept = maintenance_kg_ha(crop, settings) * (boron.estimate < target)
@@ -312,53 +310,6 @@ def _with_target_spread(
     if boron.transform == "log":
         of_target = of_target / np.maximum(boron.estimate, 1e-6)
     return np.asarray(np.hypot(boron.decision_sd, of_target))
-
-
-def _credits(
-    samples: SampleSet, grid: CellGrid, settings: RunSettings, soil: Soil
-) -> tuple[Floats, Floats]:
-    """Boron that lowers the need, and boron that counts against the caps, kg/ha each.
-
-    Given after sampling it lowers the need; given before, the test has seen it, and it only takes
-    room under the caps, declining straight to nothing over its residual time. This season's always
-    counts in full.
-    """
-    crop = settings.crop
-    credit = np.full(grid.n_cells, crop.manure_boron_kg_ha)
-    credit += crop.water_boron_mg_l * crop.irrigation_mm * G_PER_HA_FROM_MM / 1000.0
-    used = np.zeros(grid.n_cells)
-    for one in crop.applied:
-        given = _spread(one, grid)
-        sampled = samples.campaign.sampled_on
-        after = one.on is not None and sampled is not None and one.on > sampled
-        if after:
-            credit += given
-        used += given if one.this_season else given * _share_left(one, sampled, soil)
-    return credit, used
-
-
-def _spread(one: AppliedBoron, grid: CellGrid) -> Floats:
-    if not one.areas:
-        return np.full(grid.n_cells, one.kg_ha)
-    # Ground that was gone over twice got both.
-    tree = shapely.STRtree([area for area, _ in one.areas])
-    cell, area = tree.query(shapely.points(grid.centres_m), predicate="within")
-    rates = np.array([rate for _, rate in one.areas])
-    given = np.zeros(grid.n_cells)
-    np.add.at(given, cell, rates[area])
-    return given
-
-
-def _share_left(one: AppliedBoron, sampled: date | None, soil: Soil) -> Floats:
-    years = np.where(
-        soil.clay_pct < 10,
-        limit("residual-sand"),
-        np.where(soil.clay_pct <= 35, limit("residual-loam"), limit("residual-clay")),
-    )
-    if one.on is None or sampled is None:
-        return np.ones(len(years))  # no dates: counted in full, the careful side
-    passed = max((sampled - one.on).days, 0) / 365.25
-    return np.asarray(np.clip(1.0 - passed / years, 0.0, 1.0))
 
 
 def _with_hot(

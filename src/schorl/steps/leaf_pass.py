@@ -21,14 +21,13 @@ from schorl.model.record import RunRecord
 from schorl.model.settings import AppliedBoron, Machine, Override, Placement, Product, RunSettings
 from schorl.model.tissue import LeafRange, LeafVerdict, TissueSample, ZoneLeaves
 from schorl.model.zones import Zone, ZoneKind
+from schorl.steps.given import given_per_cell
 from schorl.steps.rating import ZoneRows, rated_zones
 from schorl.steps.zone_rates import Ruled, chance_limit_kg_ha, part_of, unevenness_of
 from schorl.zoning.sampled import label_in
 
 #: A pass smaller than this is not worth driving, kg B/ha (a proposal).
 LEAST_PASS_KG_HA = 0.05
-#: Ground of another rate that counts as part of a zone, m².
-TOUCHED_M2 = 1.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -141,19 +140,14 @@ def fed_need(record: RunRecord) -> CellNeed:
     )  # fmt: skip
 
 
-def _given_this_season(record: RunRecord, rate: ZoneRate) -> float:
-    """Boron of this season before the pass: the pack's, and all that counts against it."""
-    zones = {zone.number: zone.geometry for zone in record.prescription.zone_map.zones}
-    others = [one for one in record.settings.crop.applied if one.this_season]
-    return rate.boron_kg_ha + sum(_most_in(one, zones[rate.zone]) for one in others)
-
-
-def _most_in(applied: AppliedBoron, zone: Area) -> float:
-    """The most that any part of a zone got."""
-    if not applied.areas:
-        return applied.kg_ha
-    touched = [rate for area, rate in applied.areas if area.intersection(zone).area > TOUCHED_M2]
-    return max(touched, default=0.0)
+def _given_this_season(record: RunRecord, place: int) -> float:
+    """Boron of this season before the pass: the pack's, and the most that other boron gave a cell."""
+    cells = record.prescription.zone_map.labels == place
+    other = np.zeros(int(cells.sum()))
+    for one in record.settings.crop.applied:
+        if one.this_season:
+            other += given_per_cell(one, record.grid)[cells]
+    return record.prescription.rates[place].boron_kg_ha + float(other.max(initial=0.0))
 
 
 def _with_pack(record: RunRecord, source: str) -> tuple[AppliedBoron, ...]:
@@ -197,7 +191,7 @@ class _Pass:
                 self.crop, Placement.FOLIAR, self.settings.overrides
             ).kg_ha,
             str(Limit.CARRY_OVER): max(
-                season - _given_this_season(self.record, self.record.prescription.rates[place]), 0.0
+                season - _given_this_season(self.record, place), 0.0
             ),
             str(Limit.CHANCE_OF_EXCESS): chance_limit_kg_ha(
                 cells, unevenness=unevenness_of(self.settings)
