@@ -15,8 +15,7 @@ from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.machinery.plan import machine_plan
 from schorl.model.arrays import Floats
-from schorl.model.field import Area
-from schorl.model.prescription import CellNeed, Limit, ZoneRate
+from schorl.model.prescription import CellNeed, Limit
 from schorl.model.record import RunRecord
 from schorl.model.settings import AppliedBoron, Machine, Override, Placement, Product, RunSettings
 from schorl.model.tissue import LeafRange, LeafVerdict, TissueSample, ZoneLeaves
@@ -190,9 +189,7 @@ class _Pass:
             str(Limit.RATE_CAP): rate_cap(
                 self.crop, Placement.FOLIAR, self.settings.overrides
             ).kg_ha,
-            str(Limit.CARRY_OVER): max(
-                season - _given_this_season(self.record, place), 0.0
-            ),
+            str(Limit.CARRY_OVER): max(season - _given_this_season(self.record, place), 0.0),
             str(Limit.CHANCE_OF_EXCESS): chance_limit_kg_ha(
                 cells, unevenness=unevenness_of(self.settings)
             ),
