@@ -55,13 +55,11 @@ def mutants(source: str) -> Iterator[tuple[int, str, ast.Module]]:
     """Line, what was changed, and the changed module."""
     tree = ast.parse(source)
     nodes = list(ast.walk(tree))
-    # Whether a value is frozen or locked is not a dose.
-    spared = {
-        id(inner)
-        for node in nodes
-        for decorator in getattr(node, "decorator_list", ())
-        for inner in ast.walk(decorator)
-    }
+    # Whether a value is frozen, and what an annotation says, is not a dose.
+    outside = [one for node in nodes for one in getattr(node, "decorator_list", ())]
+    outside += [one for node in nodes if (one := getattr(node, "annotation", None))]
+    outside += [one for node in nodes if (one := getattr(node, "returns", None))]
+    spared = {id(inner) for one in outside for inner in ast.walk(one)}
     for place in [at for at, node in enumerate(nodes) if id(node) not in spared]:
         changed = copy.deepcopy(tree)
         node = list(ast.walk(changed))[place]

@@ -223,8 +223,9 @@ def test_class_tables_by_clay_and_organic_soil():
     assert rows == class_rows(" Program ")
     assert class_rows("atlantis") == ()
     assert "program" not in regions()
-    clay = np.array([5.0, 20.0, 45.0])
-    target = class_table_target(rows, clay, np.zeros(3, bool))
+    edges = [float(row["clay_from_pct"]) for row in rows if row["organic"] == "no"]
+    clay = np.array([5.0, 20.0, 45.0, *edges])
+    target = class_table_target(rows, clay, np.zeros(len(clay), bool))
     for value, one in zip(target, clay, strict=True):
         held = [
             float(row["adequate_from"]) for row in rows
