@@ -35,6 +35,45 @@ def flat(name: str, value: float, sd: float = 0.0) -> Surface:
     )  # fmt: skip
 
 
+def sampled(
+    boron_mg_kg: float, *, properties=None, constants=None, areas=(), **campaign
+) -> SampleSet:
+    """A sample in the middle of every cell; further properties and constants by name."""
+    known = {"boron": np.full(CELLS, float(boron_mg_kg))}
+    known |= {name: np.full(CELLS, float(value)) for name, value in (properties or {}).items()}
+    said = {"method": "hot water", "depth_cm": 20.0, "sampled_on": date(2026, 3, 1)} | campaign
+    return SampleSet(
+        ids=tuple(f"S{place}" for place in range(CELLS)), east_north_m=GRID.centres_m,
+        properties={
+            name: Measured(values=values, below_limit=np.zeros(CELLS, bool))
+            for name, values in known.items()
+        },
+        kind=("point",) * CELLS, cores=np.full(CELLS, 8), campaign=Campaign(**said), areas=areas,
+        constants=constants or {},
+    )  # fmt: skip
+
+
+def job(crop: str, *, placement: str = "broadcast", overrides=(), machine=None, **of_crop):
+    """Settings for a crop; further keys are those of its settings."""
+    leaves = placement == "foliar"
+    product = (
+        Product(form=Form.SPRAY, boron_g_l=150.0)
+        if leaves
+        else Product(form=Form.GRANULE, boron_pct=10.0)
+    )
+    return RunSettings(
+        field_name="one soil", season="none",
+        crop=CropSettings(**({"crop": crop, "next_crop": crop} | of_crop)), product=product,
+        placement=Placement(placement), machine=machine or Machine(), overrides=tuple(overrides),
+    )  # fmt: skip
+
+
+def surfaces_of(boron_mg_kg: float, **others: float) -> dict[str, Surface]:
+    """Boron with a little doubt, and other properties without."""
+    made = {name: flat(name, value) for name, value in others.items()}
+    return {"boron": flat("boron", boron_mg_kg, 0.03)} | made
+
+
 def ruled(
     crop: str,
     boron_mg_kg: float,
@@ -47,30 +86,11 @@ def ruled(
     overrides: tuple[Override, ...] = (),
 ) -> Ruled:
     """The rate of such a soil under every limit, without steps of a machine."""
-    known = np.full(CELLS, boron_mg_kg)
-    samples = SampleSet(
-        ids=("a",) * CELLS, east_north_m=GRID.centres_m,
-        properties={"boron": Measured(values=known, below_limit=np.zeros(CELLS, bool))},
-        kind=("point",) * CELLS, cores=np.full(CELLS, 8),
-        campaign=Campaign(method="hot water", depth_cm=20.0, sampled_on=date(2026, 3, 1)),
-        constants={"clay": clay_pct, "organic_matter": organic_matter_pct},
+    settings = job(
+        crop, placement=placement, overrides=overrides, incorporation_cm=incorporation_cm,
+        next_crop=next_crop or crop,
     )  # fmt: skip
-    leaves = placement == "foliar"
-    product = (
-        Product(form=Form.SPRAY, boron_g_l=150.0)
-        if leaves
-        else Product(form=Form.GRANULE, boron_pct=10.0)
-    )
-    settings = RunSettings(
-        field_name="one soil", season="none",
-        crop=CropSettings(
-            crop=crop, next_crop=next_crop or crop, incorporation_cm=incorporation_cm
-        ),
-        product=product, placement=Placement(placement), machine=Machine(), overrides=overrides,
-    )  # fmt: skip
-    surfaces = {
-        "boron": flat("boron", boron_mg_kg, 0.03),
-        "clay": flat("clay", clay_pct),
-        "organic_matter": flat("organic_matter", organic_matter_pct),
-    }
+    surfaces = surfaces_of(boron_mg_kg, clay=clay_pct, organic_matter=organic_matter_pct)
+    constants = {"clay": clay_pct, "organic_matter": organic_matter_pct}
+    samples = sampled(boron_mg_kg, constants=constants)
     return ruled_rate(assess_cells(samples, surfaces, GRID, settings).need, settings)
