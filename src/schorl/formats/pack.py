@@ -211,7 +211,10 @@ def read_pack(folder: Path) -> PackContents:
     try:
         record = json.loads((folder / "summary.json").read_text(encoding="utf-8"))
         manifest = json.loads((folder / "manifest.json").read_text(encoding="utf-8"))
-        with fiona.open(folder / "prescription.gpkg", layer="zones") as layer:
+        package = folder / "prescription.gpkg"
+        if not package.exists():
+            raise FileNotFoundError(2, "no such file", str(package))
+        with fiona.open(package, layer="zones") as layer:
             shapes = {
                 int(row.properties["zone"]): shapely.geometry.shape(row.geometry) for row in layer
             }
@@ -225,8 +228,10 @@ def read_pack(folder: Path) -> PackContents:
         )  # fmt: skip
     except SchorlError:
         raise
-    except FileNotFoundError as reason:
-        what = f"not a pack: there is no {Path(reason.filename or folder).name} in it"
+    except (FileNotFoundError, NotADirectoryError) as reason:
+        missing = Path(reason.filename or folder).name
+        there = folder.is_dir()
+        what = f"not a pack: there is no {missing} in it" if there else "there is no such folder"
         raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)]) from None
     except Exception as reason:  # a folder that is not a pack fails in many ways
         what = f"not a pack that can be read: {type(reason).__name__}: {reason}"

@@ -13,6 +13,7 @@ import shapely
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.formats.pack import PackContents, read_pack
+from schorl.formats.record_file import RECORD_FILE
 from schorl.formats.verify import verify
 from schorl.formats.whole_folder import sha256_of
 from schorl.geodesy import WGS84, transform_geometry, transform_points
@@ -22,6 +23,8 @@ from schorl.model.field import CellGrid, Field
 from schorl.model.samples import PROPERTY_UNITS, Campaign, Measured, SampleSet
 from schorl.model.summary import SCHEMA
 
+#: Files of a pack that a comparison reads, which a controller's profile may leave out.
+LAYERS_READ = ("prescription.gpkg", "surfaces/boron.tif")
 #: Faults shown of a pack that is not whole; more of them say no more.
 MOST_FAULTS = 6
 DEFAULT_LAB_SD = 0.15
@@ -38,10 +41,18 @@ def read_season(folder: Path, *, crs: str | None = None) -> SeasonPack:
     Raises
     ------
     Refusal
-        Not a pack, not whole, or written by a later version (exit 3).
+        Not a pack, not whole, or written by a version that recorded less or more (exit 3).
     """
     contents = read_pack(folder)
     _check(folder, contents)
+    try:
+        return _season(folder, contents, crs)
+    except KeyError as lacking:
+        what = f"its record does not hold {lacking}"
+        raise Refusal([finding("SEASON-RECORD", where=folder.name, what=what)]) from None
+
+
+def _season(folder: Path, contents: PackContents, crs: str | None) -> SeasonPack:
     summary = contents.summary
     own_crs = summary["field"]["crs"]
     metres = crs or own_crs
@@ -67,6 +78,23 @@ def read_season(folder: Path, *, crs: str | None = None) -> SeasonPack:
         retired_numbers=tuple(summary["zoning"].get("retired_numbers", ())),
         findings=notes,
     )
+
+
+def season_of(folder: Path) -> str:
+    """The season that a pack is of.
+
+    Raises
+    ------
+    Refusal
+        Not a pack, or one whose profile left out the layers that a comparison reads (exit 3).
+    """
+    whole = all((folder / name).exists() for name in ("manifest.json", RECORD_FILE))
+    lacking = [name for name in LAYERS_READ if not (folder / name).exists()]
+    if whole and lacking:
+        what = f"its profile left out {' and '.join(lacking)}"
+        hint = f"`schorl adapt {folder.name} --profile every-format --out DIR` writes all of it"
+        raise Refusal([finding("SEASON-RECORD", where=folder.name, what=what, hint=hint)])
+    return str(read_pack(folder).summary["season"])
 
 
 def field_of(folder: Path, *, crs: str | None = None) -> Field:

@@ -49,7 +49,12 @@ def layers_of_change(change: SeasonChange, sheet: Sheet) -> list[Layer]:
     seasons = (("before", change.before), ("after", change.after))
     if all("boron" in pack.surfaces for _, pack in seasons):
         scale = _shared_scale(change)
-        layers += [_boron_layer(f"boron-{key}", pack, scale, sheet) for key, pack in seasons]
+        told = (
+            f"there is no map of change: {change.no_map or change.refused}"
+            if change.change_map is None
+            else "the map of change tells what is not"
+        )
+        layers += [_boron_layer(f"boron-{key}", pack, scale, sheet, told) for key, pack in seasons]
     layers += [_rate_layer(key, pack, both, sheet) for key, pack in seasons]
     earlier = min((change.before, change.after), key=lambda one: one.when)
     if earlier.applied is not None and earlier.applied.areas:
@@ -100,7 +105,7 @@ def _shared_scale(change: SeasonChange) -> Scale:
     return scales.even_scale(np.concatenate(both), scales.SUPPORTING[::-1], decimals=2)
 
 
-def _boron_layer(key: str, pack: SeasonPack, scale: Scale, sheet: Sheet) -> Layer:
+def _boron_layer(key: str, pack: SeasonPack, scale: Scale, sheet: Sheet, told: str) -> Layer:
     labels, size = [], FONT * sheet.side_m * 1.15
     for zone in pack.zones:
         for east, north in map_svg.label_places(zone.area, least_radius_m=1.6 * size):
@@ -114,7 +119,7 @@ def _boron_layer(key: str, pack: SeasonPack, scale: Scale, sheet: Sheet) -> Laye
     rows = list(zip(scale.colours, scale.labels, strict=True))
     note = (
         f"Boron as mapped in {pack.season}, with that season's zones. Both seasons share one key. "
-        "Much of what differs between two such maps is noise: the map of change tells what is not."
+        f"Much of what differs between two such maps is noise; {told}."
     )
     title = f"Boron in {pack.season}, mg/kg"
     return key, f"Boron {pack.season}", join([*drawn, *labels]), title, rows, note

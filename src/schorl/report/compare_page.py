@@ -83,12 +83,13 @@ def _header(change: SeasonChange) -> Safe:
 def _answer(change: SeasonChange) -> Safe:
     shift = change.shift
     tested = [one for one in change.zones if math.isfinite(one.p_adjusted)]
-    real = [one for one in tested if one.real]
+    real, least = [one for one in tested if one.real], change.least_detectable_mg_kg
     cards = [
         ("Whole field", "not told" if shift is None else f"{signed(shift.mean)} mg/kg",
          change.refused if shift is None else f"95 %: {interval(shift.low, shift.high)}"),
-        ("Zones that changed", f"{len(real)} of {len(tested)}", "beyond noise, out of those tested"),
-        ("Would show", f"{figure(change.least_detectable_mg_kg, 2)} mg/kg",
+        ("Zones that changed", f"{len(real)} of {len(tested)}" if tested else "not told",
+         "beyond noise, out of those tested" if tested else "no zone could be tested"),
+        ("Would show", f"{figure(least, 2)} mg/kg" if math.isfinite(least) else "not told",
          "least change of one zone found four times in five"),
         ("Moved", f"{figure(change.moved.moved_ha, 1)} ha",
          f"of {figure(change.common_ha, 1)} ha lie in another zone"),
@@ -118,7 +119,7 @@ def _care(change: SeasonChange) -> Safe:
 
 def _zones(change: SeasonChange) -> Safe:
     if not change.zones:
-        return section("changes", "Zones", tag("p", change.refused or "No zone can be tested."))
+        return section("changes", "Zones", tag("p", _why_not(change)))
     head = ["Zone", "Then, mg/kg", "Now, mg/kg", "Change", "It is", "95 %", "p", "Would show",
             "Samples"]  # fmt: skip
     said = (
@@ -131,6 +132,11 @@ def _zones(change: SeasonChange) -> Safe:
     )  # fmt: skip
 
 
+def _why_not(change: SeasonChange) -> str:
+    """Why the soil tests of both seasons are not compared."""
+    return f"Not tested: {change.refused or 'too few samples in both seasons'}."
+
+
 def _drawn_in(change: SeasonChange) -> str:
     return min(change.before, change.after, key=lambda one: one.when).season
 
@@ -138,7 +144,7 @@ def _drawn_in(change: SeasonChange) -> str:
 def _shift(change: SeasonChange) -> Safe:
     shift = change.shift
     if shift is None:
-        return section("shift", "Whole field", tag("p", change.refused or "Too few samples."))
+        return section("shift", "Whole field", tag("p", _why_not(change)))
     rows = [
         ["Change of the mean", f"{signed(shift.mean, 3)} mg/kg"],
         ["Its 95 % interval", f"{interval(shift.low, shift.high, 3)} mg/kg"],

@@ -10,8 +10,7 @@ from pathlib import Path
 from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, finding
 from schorl.formats.change import write_change
-from schorl.formats.pack import read_pack
-from schorl.formats.season import field_of, read_season
+from schorl.formats.season import field_of, read_season, season_of
 from schorl.formats.whole_folder import Rows
 from schorl.formats.writing import safe_name
 from schorl.intake.applied import read_applied
@@ -23,6 +22,10 @@ from schorl.run.prescribing import versions
 from schorl.steps.comparing import compare
 
 MANY = 2
+APPLIED_HINTS = {
+    "IN-UNIT": 'say --applied-unit "kg B/ha", or "kg/ha" of product with --boron-pct',
+    "IN-COLUMN": "name the column with --applied-column",
+}
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -56,7 +59,7 @@ def compare_packs(
     if len(folders) < MANY:
         what = f"{len(folders)} pack given; a comparison needs two or more"
         raise UsageProblem([finding("JOB-MISSING", where="compare", what=what)])
-    seasons = [str(read_pack(one).summary["season"]) for one in folders]
+    seasons = [season_of(one) for one in folders]
     _check_seasons(given, seasons)
     crs = field_of(folders[0]).crs
     packs = [
@@ -101,9 +104,7 @@ def _applied(
 
 def _as_option(found: Finding) -> Finding:
     """The finding with a way out on the command line, where the reader speaks of a job file."""
-    if found.code != "IN-UNIT":
-        return found
-    hint = 'say --applied-unit "kg B/ha", or "kg/ha" of product with --boron-pct'
+    hint = APPLIED_HINTS.get(found.code, found.hint)
     return finding(found.code, where=found.where, what=found.what, hint=hint)
 
 

@@ -36,7 +36,7 @@ from schorl.steps.season_sites import (
 from schorl.steps.season_strips import check_strips
 from schorl.steps.season_tests import ZoneData, field_shift, least_detectable, zone_changes
 from schorl.steps.season_turned import turned
-from schorl.steps.season_words import in_words
+from schorl.steps.season_words import SAME_SAMPLES, in_words
 from schorl.steps.season_zones import DRAWS, rate_changes, zones_moved
 from schorl.zoning.sampled import composite_error_mg_kg
 
@@ -97,7 +97,7 @@ def _compare(
     progress("comparing", 0, 3)
     refused = _not_comparable(before.samples, after.samples)
     if not refused and not same and _same_samples(before.samples, after.samples, pairs):
-        refused = "both packs rest on the same samples"
+        refused = SAME_SAMPLES
     paired = _are_paired(pairs, before.samples, after.samples)
     shift = None if refused else _shift(pairs, before.samples, after.samples, paired=paired)
     doubted = shift is not None and bool(shift.warning)

@@ -6,6 +6,8 @@ import numpy as np
 
 from schorl.model.change import SeasonChange, ZoneChange
 
+#: Why two packs of one campaign are not subtracted.
+SAME_SAMPLES = "both packs rest on the same samples"
 #: Less ground than this in another zone is drawing, not moving.
 LEAST_MOVED_HA = 0.01
 
@@ -109,6 +111,8 @@ def _recovery(change: SeasonChange) -> str:
 
 def _next(change: SeasonChange) -> str:
     if change.refused:
+        if change.refused == SAME_SAMPLES:
+            return "Compare packs of two sampling campaigns to learn what changed."
         return "Sample both seasons alike (method, depth) to learn what changed."
     if change.shift is not None and change.shift.warning:
         return (

@@ -12,6 +12,7 @@ from schorl.geodesy import area_ha
 from schorl.geostat import krige
 from schorl.geostat.reml import fit_best_transform
 from schorl.geostat.support import data_covariance, layout_of
+from schorl.geostat.threads import one_blas_thread
 from schorl.model.arrays import Counts, Floats
 from schorl.model.change import Moved, RateChange, SeasonPack, SeasonZone, ZonesMoved
 from schorl.model.field import Area
@@ -170,8 +171,10 @@ def _classes(
 
     table = np.column_stack([values[name] / scale[name].std() for name in sorted(values)])
     some = table[:: max(len(table) // MOST_CELLS, 1)]
-    found = KMeans(n_clusters=count, n_init=4, random_state=seed).fit(some)
-    return np.asarray(found.predict(table), dtype=np.intp)
+    # One thread: sums split over more would differ in their last bits from machine to machine.
+    with one_blas_thread():
+        found = KMeans(n_clusters=count, n_init=4, random_state=seed).fit(some)
+        return np.asarray(found.predict(table), dtype=np.intp)
 
 
 def _sampled_again(
