@@ -245,6 +245,28 @@ def test_a_pack_in_another_metric_system_is_the_same_season(packs):
     assert read_season(packs / "Long-Acre-2025").identity == own.identity
 
 
+@pytest.mark.parametrize(
+    ("second", "more", "code", "says"),
+    [
+        ("nowhere", (), "OUT-NOT-PACK", "no such folder"),
+        ("Long-Acre-2026", ("--applied-unit", "kg B/ha"), "IN-COLUMN", "product_kg_ha"),
+        ("Long-Acre-2026", ("--applied-column", "product_kg_ha"), "IN-UNIT", "not clear"),
+    ],
+)
+def test_what_cannot_be_read_is_named_with_a_way_out(packs, tmp_path, second, more, code, says):
+    applied = FIELDS / "long_acre/2026/spread_2025.geojson"
+    exit_code, answer = run(
+        "compare", packs / "Long-Acre-2025", packs / second, "--out", tmp_path / "out",
+        "--applied", f"2025={applied}", *more,
+    )  # fmt: skip
+    (found,) = answer["findings"]
+    assert (exit_code, found["code"]) == (3, code)
+    assert says in found["what"]
+    if code.startswith("IN-"):
+        assert "--applied-" in found["hint"]
+    assert not (tmp_path / "out").exists()
+
+
 def test_three_seasons_in_a_row(packs, tmp_path):
     job = FIELDS / "long_acre/2026"
     code, _ = run("prescribe", job, "--season", "2027", "--sampled-on", "2027-09-20",
