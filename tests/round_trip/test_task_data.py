@@ -241,6 +241,21 @@ ZONE_DEFECTS = {
     "negative rate": (matched(r'PDV A="0006" B="[1-9]', 'PDV A="0006" B="-1'), "not a rate"),
     "off zone not there": (matched(r' H="0"', ' H="9"'), "default zone"),
     "ring left open": (matched(r"<PNT [^>]*/>\n</LSG>", "</LSG>"), "not closed"),
+    "version of another day": (matched(r'VersionMajor="4"', 'VersionMajor="2"'), "neither 3 nor 4"),
+    "no software named": (matched(r' ManagementSoftwareVersion="[^"]*"', ""), "is missing"),
+    "rate where the machine is lost": (
+        matched(r'(TZN A="0"[^>]*>\s*<PDV A="0006" B=)"0"', r'\1"900"'), "without product",
+    ),
+    "two rates": (matched(r"(<PDV [^>]*/>)\n</TZN>\n</TSK>", r"\1\1</TZN></TSK>"), "2 rates"),
+    "no rate": (matched(r"<PDV [^>]*/>\n</TZN>\n</TSK>", "</TZN></TSK>"), "0 rates"),
+    "mass and volume": (
+        matched(r'(TZN A="1"[\s\S]*?PDV A=)"0006"', r'\1"0001"'), "by mass and by volume",
+    ),
+    "shown a hundredfold": (matched(r'(<VPN [^>]* C=)"0.01"', r'\1"1"'), "not shown in kg/ha"),
+    "shown in another unit": (matched(r'E="kg/ha"', 'E="lb/ac"'), "not shown in kg/ha"),
+    "zone drawn as boundary": (matched(r'(TZN A="1"[^>]*>\s*<PLN A=)"2"', r'\1"1"'), "of type `1`"),
+    "outer ring as inner": (matched(r'(TZN A="1"[^>]*>\s*<PLN[^>]*>\s*<LSG A=)"1"', r'\1"2"'), "outer"),
+    "rate of other digits": (matched(r'PDV A="0006" B="[1-9]', 'PDV A="0006" B="\u00b2'), "not a rate"),
     "name in small letters": (
         lambda folder: (folder / XML).rename(folder / "taskdata.xml"), "neither a pack",
     ),
@@ -258,6 +273,20 @@ def test_verify_names_deliberate_defects_of_zones(sets, tmp_path, defect):
     seen = verify(folder)
     assert not seen.whole
     assert any(word in fault.what for fault in seen.faults), seen.faults
+
+
+def test_kilograms_turned_to_litres_are_told(sets, tmp_path):
+    """The same figures by the other entry agree with every zone's rate, and with none's unit."""
+    _, pack, folder = sets["4", "zones"]
+    copy = tmp_path / "pack"
+    shutil.copytree(pack, copy)
+    path = copy / folder.relative_to(pack) / XML
+    text = re.sub(r'A="0006" B="([0-9]+)"', r'A="0001" B="\g<1>00"', path.read_text("utf-8"))
+    text = text.replace('C="0.01" D="2" E="kg/ha"', 'C="0.0001" D="2" E="L/ha"')
+    path.write_text(text.replace('B="000"', 'B="0"'), "utf-8")
+    assert verify(path).whole  # by itself it is a sound file
+    seen = verify(copy)
+    assert any("L/ha, recorded kg/ha" in fault.what for fault in seen.faults), seen.faults
 
 
 def test_a_rate_changed_in_a_pack_is_told_cell_by_cell(sets, tmp_path):

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 from xml.etree import ElementTree
@@ -12,10 +12,12 @@ import shapely
 from shapely.geometry import Polygon
 
 from schorl.formats.reading_grid import TaskCells, read_cells
+from schorl.formats.reading_shapefile import length_faults, ring_faults
 from schorl.formats.task_rules import task_faults
 from schorl.formats.taskdata import MASS_COUNTS, MASS_DDI, VOLUME_COUNTS, VOLUME_DDI
 
 RATE_STEP = {"geojson": 1e-6, "gpkg": 1e-6, "shapefile": 0.005, "taskdata": 0.005}
+UNITS = {MASS_DDI: "kg", VOLUME_DDI: "L"}
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -45,6 +47,7 @@ class FileZones:
     faults: tuple[Fault, ...] = ()
     boundary: Any = None
     cells: TaskCells | None = None  # of a grid, instead of zones
+    unit: str = ""  # "kg" or "L" where the kind of file says it by itself
 
 
 def read_zones(path: Path) -> FileZones:
@@ -142,7 +145,9 @@ def _shapefile(path: Path) -> FileZones:
     ]
     if any(fault.file.endswith((".shx", ".dbf")) for fault in faults):
         return FileZones(kind="shapefile", zones=(), faults=tuple(faults))
-    faults += _lengths(path)
+    said = length_faults(path)  # of a set cut short the rings cannot be told
+    said = said or ring_faults(path)
+    faults += [Fault(file=name, place=place, what=what) for name, place, what in said]
     meta, _, wkb, columns = pyogrio.raw.read(path)
     table = dict(zip(meta["fields"], columns, strict=True))
     if {"RATE", "ZONE"} - set(table):
@@ -150,30 +155,6 @@ def _shapefile(path: Path) -> FileZones:
         return FileZones(kind="shapefile", zones=(), faults=tuple(faults))
     zones = _rows(table["ZONE"], shapely.from_wkb(wkb), table["RATE"])
     return FileZones(kind="shapefile", zones=zones, faults=tuple(faults))
-
-
-def _lengths(path: Path) -> list[Fault]:
-    """Header lengths against real ones: a half-written or appended set reads as a whole one."""
-    faults = []
-    counts = {}
-    for suffix in (".shp", ".shx"):
-        data = path.with_suffix(suffix).read_bytes()
-        said = 2 * int.from_bytes(data[24:28], "big")
-        if said != len(data):
-            what = f"its header says {said} bytes, it has {len(data)}"
-            faults.append(Fault(file=path.with_suffix(suffix).name, place="header", what=what))
-        if suffix == ".shx":
-            counts[".shx"] = (len(data) - 100) // 8
-        if int.from_bytes(data[32:36], "little") != 5:
-            faults.append(Fault(file=path.name, place="header", what="not of polygon type"))
-    table = path.with_suffix(".dbf").read_bytes()
-    rows = int.from_bytes(table[4:8], "little")
-    header, width = int.from_bytes(table[8:10], "little"), int.from_bytes(table[10:12], "little")
-    held = (len(table) - header) // max(width, 1)
-    if not rows == held == counts[".shx"]:
-        what = f"{rows} rows said, {held} held, {counts['.shx']} shapes"
-        faults.append(Fault(file=path.with_suffix(".dbf").name, place="header", what=what))
-    return faults
 
 
 def _geopackage(path: Path) -> FileZones:
@@ -220,8 +201,10 @@ def _taskdata(path: Path) -> FileZones:
         Fault(file=path.name, place=place, what=what) for place, what in task_faults(path, root)
     ]
     tasks = root.findall("TSK")
+    first = next(root.iter("PDV"), None)
+    unit = "" if first is None else UNITS.get(first.get("A", ""), "")
     if len(tasks) == 1 and tasks[0].find("GRD") is not None:
-        return _task_cells(path, root, tasks[0], faults)
+        return replace(_task_cells(path, root, tasks[0], faults), unit=unit)
     zones: list[FileZone] = []
     for zone in tasks[0].findall("TZN") if tasks else []:
         polygons = [_task_polygon(one) for one in zone.findall("PLN")]
@@ -236,7 +219,7 @@ def _taskdata(path: Path) -> FileZones:
                 rate=_task_rate(value),
             )
         )
-    return FileZones(kind="taskdata", zones=tuple(zones), faults=tuple(faults))
+    return FileZones(kind="taskdata", zones=tuple(zones), faults=tuple(faults), unit=unit)
 
 
 def _task_cells(

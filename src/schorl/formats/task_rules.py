@@ -10,7 +10,14 @@ import re
 from pathlib import Path
 from xml.etree import ElementTree
 
-from schorl.formats.taskdata import MASS_DDI, MOST_CODES, VOLUME_DDI, XML_NAME
+from schorl.formats.taskdata import (
+    MASS_COUNTS,
+    MASS_DDI,
+    MOST_CODES,
+    VOLUME_COUNTS,
+    VOLUME_DDI,
+    XML_NAME,
+)
 
 Said = list[tuple[str, str]]
 #: Element -> attributes it must have, may have, and those of them that name another element.
@@ -30,6 +37,8 @@ ELEMENTS = {
 }
 WITH_ID = ("CTR", "FRM", "PFD", "PDT", "VPN", "TSK")
 NAMED = ("CTR", "FRM", "PDT", "TSK", "TZN")
+HEAD = ("VersionMajor", "VersionMinor", "ManagementSoftwareManufacturer",
+        "ManagementSoftwareVersion", "DataTransferOrigin")  # fmt: skip
 LONGEST = 32
 IDENTIFIER = re.compile(r"[A-Z]{3}[1-9][0-9]{0,9}")
 DECIMALS = 9
@@ -42,14 +51,18 @@ def task_faults(path: Path, root: ElementTree.Element) -> Said:
         said.append(("file", f"the name must be {XML_NAME}"))
     if root.tag != "ISO11783_TaskData":
         said.append(("top", f"`{root.tag}` is no task data"))
+    said += _head_faults(root)
     for one in root.iter():
         said += _attribute_faults(one)
+    said += _polygon_faults(root)
     said += _identifier_faults(root)
     tasks = root.findall("TSK")
     if len(tasks) != 1:
         said.append(("TSK", f"{len(tasks)} tasks; one is expected"))
     for task in tasks:
         said += _zone_code_faults(task)
+        said += _value_faults(task)
+    said += _shown_faults(root)
     for line in root.iter("LSG"):
         said += _ring_faults(line)
     return said
@@ -117,7 +130,7 @@ def _zone_code_faults(task: ElementTree.Element) -> Said:
     said += [
         ("TZN", f"`{one}` is no code from 0 to {MOST_CODES}")
         for one in codes
-        if not one.isdigit() or int(one) > MOST_CODES
+        if not re.fullmatch("[0-9]{1,3}", one) or int(one) > MOST_CODES
     ]
     for key, words in (("H", "default"), ("I", "position lost"), ("J", "out of field")):
         if task.get(key) not in codes:
@@ -126,10 +139,74 @@ def _zone_code_faults(task: ElementTree.Element) -> Said:
         said.append(("GRD", "more than one grid in a task"))
     if task.findall("GRD") and any(zone.findall("PLN") for zone in task.findall("TZN")):
         said.append(("GRD", "polygons and a grid in one task"))
+    return said
+
+
+def _value_faults(task: ElementTree.Element) -> Said:
+    """Rates: one a zone, all by mass or all by volume, none where the machine is lost or outside."""
+    said: Said = []
+    for zone in task.findall("TZN"):
+        values = zone.findall("PDV")
+        code = zone.get("A")
+        if len(values) != 1:
+            said.append(("TZN", f"{len(values)} rates in zone {code}; one is expected"))
+        if code in (task.get(key) for key in "HIJ") and any(one.get("B") != "0" for one in values):
+            said.append(("TZN", f"zone {code} is for ground without product, and has a rate"))
     for value in task.iter("PDV"):
         counts = value.get("B", "")
         if value.get("A") not in (MASS_DDI, VOLUME_DDI):
             said.append(("PDV", f"`{value.get('A')}` is not a product rate entry"))
-        if not counts.isdigit() or int(counts) >= 2**31:
+        if not (counts.isascii() and counts.isdigit() and len(counts) <= 10):
             said.append(("PDV", f"`{counts}` is not a rate"))
+        elif int(counts) >= 2**31:
+            said.append(("PDV", f"`{counts}` is larger than the format can hold"))
+    if len({value.get("A") for value in task.iter("PDV")}) > 1:
+        said.append(("PDV", "rates by mass and by volume in one task"))
+    return said
+
+
+def _shown_faults(root: ElementTree.Element) -> Said:
+    """What a terminal shows for a rate: counts times scale must be the unit that is named."""
+    per = {MASS_DDI: ("kg/ha", MASS_COUNTS), VOLUME_DDI: ("L/ha", VOLUME_COUNTS)}
+    used = {(one.get("A", ""), one.get("E")) for one in root.iter("PDV")}
+    said: Said = []
+    for shown in root.findall("VPN"):
+        for entry in sorted(entry for entry, name in used if name == shown.get("A")):
+            unit, counts = per.get(entry, ("", 0.0))
+            if unit and not (
+                shown.get("E") == unit
+                and shown.get("B") == "0"
+                and _is_number(shown.get("C"), 1 / counts)
+            ):
+                what = f"rates of entry {entry} are not shown in {unit} by scale {shown.get('C')}"
+                said.append(("VPN", what))
+    return said
+
+
+def _is_number(text: str | None, value: float) -> bool:
+    try:
+        return abs(float(text or "") / value - 1) < 1e-9
+    except ValueError:
+        return False
+
+
+def _head_faults(root: ElementTree.Element) -> Said:
+    said = [
+        ("top", f"attribute {key} is missing") for key in HEAD if not root.get(key)
+    ]  # fmt: skip
+    if root.get("VersionMajor") not in ("3", "4"):
+        said.append(("top", f"version `{root.get('VersionMajor')}` is neither 3 nor 4"))
+    return said
+
+
+def _polygon_faults(root: ElementTree.Element) -> Said:
+    """Kinds of polygons and rings: boundary 1 or treatment zone 2; outer 1 or inner 2."""
+    said: Said = []
+    for holder, kind in (("PFD", "1"), ("TZN", "2")):
+        for polygon in root.iterfind(f".//{holder}/PLN"):
+            if polygon.get("A") != kind:
+                said.append(("PLN", f"a {holder} has a polygon of type `{polygon.get('A')}`"))
+            kinds = [ring.get("A") for ring in polygon.findall("LSG")]
+            if "1" not in kinds or set(kinds) - {"1", "2"}:
+                said.append(("PLN", "its rings are not one outer ring and inner ones"))
     return said

@@ -200,6 +200,7 @@ def cell_faults(
             faults.append(Fault(file=name, place="cells", what=what))
     if summary is None or faults:
         return faults
+    faults += _unit_faults(name, read, summary)
     recorded = {row["zone"]: row for row in summary["zones"]}
     step = RATE_STEP[read.kind] * (1 + 1e-9) + 1e-9
     for zone in zones:
@@ -266,8 +267,8 @@ def _cover_faults(name: str, zones: list[Any], outline: Any) -> list[Fault]:
 
 def _record_faults(name: str, read: FileZones, summary: dict[str, Any]) -> list[Fault]:
     """Rates, zones and total against the record."""
-    faults = []
     recorded = {row["zone"]: row for row in summary["zones"]}
+    faults = _unit_faults(name, read, summary)
     per, step = _scale(read.kind, summary)
     total = 0.0
     for zone in read.zones:
@@ -290,6 +291,13 @@ def _record_faults(name: str, read: FileZones, summary: dict[str, Any]) -> list[
         what = f"its rates add up to {total:.1f}, recorded {said:.1f}"
         faults.append(Fault(file=name, place="total", what=what))
     return faults
+
+
+def _unit_faults(name: str, read: FileZones, summary: dict[str, Any]) -> list[Fault]:
+    said = summary["totals"]["unit"]
+    if read.unit in ("", said):
+        return []
+    return [Fault(file=name, place="rates", what=f"they are {read.unit}/ha, recorded {said}/ha")]
 
 
 def _scale(kind: str, summary: dict[str, Any]) -> tuple[float, float]:
