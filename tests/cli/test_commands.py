@@ -124,13 +124,16 @@ def test_prescribe_verify_and_a_second_run(tmp_path):
     assert document(spoiled)["result"]["faults"]
 
 
-def test_the_same_bytes_with_any_threads_and_hash_seed(tmp_path):
+def test_the_same_bytes_with_any_threads_hash_seed_clock_zone_and_locale(tmp_path):
     import os
 
     seen = []
-    for threads, seed in (("1", "0"), ("2", "1"), ("8", "random")):
+    places = [("1", "0", "UTC", "C"), ("2", "1", "Asia/Tokyo", "C.UTF-8"),
+              ("8", "random", "America/St_Johns", "de_DE.UTF-8")]  # fmt: skip
+    for threads, seed, zone, words in places:
         out = tmp_path / threads
-        env = {**os.environ, "SCHORL_THREADS": threads, "PYTHONHASHSEED": seed, "TZ": "Asia/Tokyo"}
+        env = {**os.environ, "SCHORL_THREADS": threads, "PYTHONHASHSEED": seed, "TZ": zone,
+               "LC_ALL": words, "LANG": words}  # fmt: skip
         done = schorl("prescribe", MARL_PIT, "--out", out, "--json", env=env)
         files = document(done)["result"]["pack"]["files"]
         seen.append({one["path"]: one["sha256"] for one in files})
