@@ -344,6 +344,8 @@ def test_between_boron_and_product():
     liquid = Product(form=Form.SPRAY, boron_g_l=150.0)
     assert boron_per_unit(liquid) == pytest.approx(0.15)
     assert boron_per_unit(liquid, Machine(mix_g_b_l=2.0)) == pytest.approx(0.002)
+    blended = Machine(carrier="sand", carrier_may_vary=True, blend_pct=40.0)
+    assert boron_per_unit(GRANULE, blended) == pytest.approx(0.04)
     with pytest.raises(UsageProblem):
         boron_per_unit(Product(form=Form.GRANULE))
     with pytest.raises(UsageProblem):
@@ -356,6 +358,9 @@ def test_between_boron_and_product():
     assert step_boron_kg_ha(liquid, Machine(step=10.0)) == 0.0
     assert step_boron_kg_ha(liquid, Machine(step=10.0, mix_g_b_l=2.0)) == pytest.approx(0.02)
     assert rate_band(GRANULE, Machine()) == (0.0, np.inf)
+    assert rate_band(liquid, Machine(mix_g_b_l=2.0)) == (0.0, np.inf)
+    assert rate_band(liquid, Machine(nozzle_size="03")) == (0.0, np.inf)
+    assert rate_band(GRANULE, Machine(nozzle_size="03", mix_g_b_l=2.0)) == (0.0, np.inf)
     assert rate_band(GRANULE, Machine(least_rate=4.0, most_rate=60.0)) == (4.0, 60.0)
     nozzled = Machine(nozzle_size="03", mix_g_b_l=2.0, least_rate=1.0, most_rate=900.0)
     low, high = rate_band(liquid, nozzled)
