@@ -6,12 +6,13 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+import shapely
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from schorl.model.change_summary import change_summary
 from schorl.steps.comparing import compare
-from schorl.steps.season_strips import check_strips
+from schorl.steps.season_strips import check_strips, doubled_kg_ha
 from schorl.steps.season_tests import holm
 from support.seasons import halves, lattice, season
 
@@ -127,6 +128,27 @@ def test_strips_keep_the_limits_and_the_field(rates, cap, ceiling):
                 assert rate == 0
             else:
                 assert own < rate <= min(2 * own, cap, ceiling) + 1e-12
+
+
+def test_strips_keep_clear_of_ground_that_gets_none():
+    pack = season(np.full(len(PLACES), 0.5), places=PLACES)
+    assert check_strips(pack)
+    for strip in check_strips(pack):
+        west, south, *_ = strip.area.bounds  # strips run east: a spot on the southern side
+        spot = shapely.box(west + 20, south - 2, west + 24, south + 2)
+        kept = tuple(
+            replace(zone, area=zone.area.difference(spot), limits_kg_ha={}) for zone in pack.zones
+        )
+        off = replace(kept[0], number=9, kind="keep-off", area=spot, boron_kg_ha=0.0)
+        for other in check_strips(replace(pack, zones=(*kept, off))):
+            assert other.area.intersection(spot).area < 1.0
+
+
+def test_a_doubled_strip_keeps_the_limits_of_a_zone_it_touches():
+    low = replace(halves()[0], boron_kg_ha=0.4, limits_kg_ha={"rate cap": 0.5})
+    high = replace(low, number=2, boron_kg_ha=1.0, limits_kg_ha={"rate cap": 2.24})
+    assert doubled_kg_ha(high) == 2.0
+    assert doubled_kg_ha(high, beside=[low]) == 0.5
 
 
 def test_numbers_are_never_given_twice():

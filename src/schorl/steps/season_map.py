@@ -36,9 +36,11 @@ def change_map(
     """
     floor = min(2 * lab_sd**2, float(change.var(ddof=1)))
     estimate, sd, pattern = _mapped(east_north_m, change, grid, floor=floor)
+    # One mean for the whole field is tested as a mean is: its spread is guessed from few sites.
+    law = stats.t(len(change) - 1) if pattern == "no pattern" else stats.norm
     still = (sd == 0) & (estimate == 0)
     z = np.abs(estimate) / np.where(sd > 0, sd, 1.0)
-    p = np.where(still, 1.0, np.where(sd > 0, 2 * stats.norm.sf(z), 0.0))
+    p = np.where(still, 1.0, np.where(sd > 0, 2 * law.sf(z), 0.0))
     adjusted = stats.false_discovery_control(p, method="bh")
     real = (adjusted <= FALSE_DISCOVERIES) & (not doubted)
     cell_ha = grid.cell_m**2 / 1e4

@@ -6,7 +6,7 @@ works, runs with the direction of travel and crosses two zones, so that both ans
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 import numpy as np
 import shapely
@@ -20,6 +20,8 @@ from schorl.zoning.travel import axes_of
 LEAST_M, MOST_M = 30.0, 100.0
 #: Strips keep this many working widths from each other and from the field's edge.
 APART_WIDTHS = 1
+#: Less ground than this of another zone under a strip is rounding (a choice).
+LEAST_TOUCHED_M2 = 1.0
 #: Limits that a doubled rate must keep, by the names zones carry them under.
 NO_LIMITS = ("need", "machine", "least rate worth giving")
 
@@ -43,7 +45,8 @@ def _best(pack: SeasonPack, kind: str, taken: list[Area]) -> CheckStrip | None:
     for area, zones, lengths in _candidates(pack):
         if any(area.distance(one) < APART_WIDTHS * pack.working_width_m for one in taken):
             continue
-        rates = [0.0 if kind == "untreated" else doubled_kg_ha(zone) for zone in zones]
+        doubled = [doubled_kg_ha(zone, beside=_touched(pack, area, zones)) for zone in zones]
+        rates = [0.0] * len(zones) if kind == "untreated" else doubled
         if kind == "doubled" and any(
             rate <= zone.boron_kg_ha for rate, zone in zip(rates, zones, strict=True)
         ):
@@ -53,10 +56,27 @@ def _best(pack: SeasonPack, kind: str, taken: list[Area]) -> CheckStrip | None:
     return best
 
 
-def doubled_kg_ha(zone: SeasonZone) -> float:
-    """Twice a zone's boron rate, held to every limit that the zone's own rate was held to."""
-    limits = [value for name, value in zone.limits_kg_ha.items() if name not in NO_LIMITS]
+def doubled_kg_ha(zone: SeasonZone, *, beside: Sequence[SeasonZone] = ()) -> float:
+    """Twice a zone's boron rate, held to every limit that the zone's own rate was held to.
+
+    ``beside`` are other zones that the strip touches with a side: their limits hold there too.
+    """
+    limits = [
+        value
+        for one in (zone, *beside)
+        for name, value in one.limits_kg_ha.items()
+        if name not in NO_LIMITS
+    ]
     return min([2 * zone.boron_kg_ha, *limits])
+
+
+def _touched(
+    pack: SeasonPack, strip: Area, zones: tuple[SeasonZone, ...]
+) -> tuple[SeasonZone, ...]:
+    """Zones under a strip beside the two it is laid across."""
+    numbers = {zone.number for zone in zones}
+    others = [zone for zone in pack.zones if zone.number not in numbers]
+    return tuple(one for one in others if strip.intersection(one.area).area > LEAST_TOUCHED_M2)
 
 
 def _strip(kind: str, area: Area, zones: tuple[SeasonZone, ...], rates: list[float]) -> CheckStrip:
@@ -102,7 +122,7 @@ def _between(
             if min(lengths) < LEAST_M:
                 continue
             box = _box(middle, border - lengths[0], border + lengths[1], width, axes)
-            if _mostly(box, first.area, second.area):
+            if _mostly(box, first.area, second.area) and _all_treated(pack, box, (first, second)):
                 yield box, (first, second), lengths
 
 
@@ -138,3 +158,8 @@ def _mostly(box: Area, first: Area, second: Area) -> bool:
     """Whether nine tenths of a strip lie in its two zones: its sides may touch a third."""
     shared = box.intersection(first).area + box.intersection(second).area
     return bool(shared >= 0.9 * box.area)
+
+
+def _all_treated(pack: SeasonPack, box: Area, zones: tuple[SeasonZone, ...]) -> bool:
+    """Whether a strip keeps clear of ground that gets none: keep-off areas and hot spots."""
+    return all(one.boron_kg_ha > 0 for one in _touched(pack, box, zones))

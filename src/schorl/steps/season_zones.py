@@ -11,11 +11,13 @@ from scipy.optimize import linear_sum_assignment
 from schorl.geodesy import area_ha
 from schorl.geostat import krige
 from schorl.geostat.reml import fit_best_transform
-from schorl.geostat.support import data_covariance, layout_of
+from schorl.geostat.support import data_covariance, layout_of, noise_of
 from schorl.geostat.threads import one_blas_thread
 from schorl.model.arrays import Counts, Floats
 from schorl.model.change import Moved, RateChange, SeasonPack, SeasonZone, ZonesMoved
 from schorl.model.field import Area
+from schorl.model.samples import SampleSet
+from schorl.model.variogram import Support, VariogramFit
 from schorl.steps.mapping import supports_of
 from schorl.steps.season_sites import ZONE
 from schorl.zoning.matching import (
@@ -30,6 +32,8 @@ from schorl.zoning.matching import (
 
 #: Times the sites are sampled again in thought, and cells that classes are found on.
 DRAWS, MOST_CELLS = 24, 4000
+#: Fewer sites than this do not make a map that could be drawn again.
+LEAST_SITES = 10
 LEAST_MOVED_HA = 0.01
 
 
@@ -66,7 +70,7 @@ def zones_moved(
         kappa=kappa(square),
         quantity=quantity,
         allocation=allocation,
-        by_chance=agreement_by_chance(before, random=random, draws=draws),
+        by_chance=agreement_by_chance(before, after.samples, random=random, draws=draws),
     )
 
 
@@ -130,12 +134,14 @@ def rate_changes(
 
 
 def agreement_by_chance(
-    pack: SeasonPack, *, random: np.random.Generator, draws: int
+    pack: SeasonPack, later: SampleSet, *, random: np.random.Generator, draws: int
 ) -> tuple[float, float]:
-    """Kappa and adjusted Rand index that sampling the same sites again would give, nothing changed.
+    """Kappa and adjusted Rand index that sampling again would give, nothing changed.
 
-    Every mapped property is drawn anew at its sites from its fitted model given what was measured
-    (same soil, new laboratory and short-range error), mapped, and the cells clustered into as many
+    Every mapped property is drawn anew from its fitted model given what was measured (same soil,
+    new laboratory and short-range error) at the sites of the ``later`` season: new sites move
+    zones more than the same ones. Composites, and what was not measured again, are drawn at their
+    own. The draws are mapped, and the cells clustered into as many
     classes (k-means); both figures are means over the draws of the agreement with the classes of
     the maps as they are. NaN where zones were not drawn from the samples, or are fewer than two.
     """
@@ -144,7 +150,7 @@ def agreement_by_chance(
     if pack.origin != "clusters" or count < 2 or "boron" not in pack.surfaces or draws < 1:
         return nothing
     varying = {name: one for name, one in pack.surfaces.items() if np.ptp(one) > 0}
-    again = {name: _sampled_again(pack, name, random, draws) for name in varying}
+    again = {name: _sampled_again(pack, later, name, random, draws) for name in varying}
     if all(one is None for one in again.values()):
         return nothing
     seed = int(random.integers(2**31))
@@ -178,12 +184,12 @@ def _classes(
 
 
 def _sampled_again(
-    pack: SeasonPack, name: str, random: np.random.Generator, draws: int
+    pack: SeasonPack, later: SampleSet, name: str, random: np.random.Generator, draws: int
 ) -> Floats | None:
-    """Maps ``(n_cells, draws)`` of one property from samples taken again at the same sites."""
+    """Maps ``(n_cells, draws)`` of one property from samples taken again."""
     one = pack.samples.properties.get(name)
     known = np.zeros(0, dtype=bool) if one is None else one.known
-    if one is None or known.sum() < 10 or np.ptp(one.values[known]) == 0:
+    if one is None or known.sum() < LEAST_SITES or np.ptp(one.values[known]) == 0:
         return None
     values = one.values[known]
     places, support = pack.samples.east_north_m[known], supports_of(pack.samples, known)
@@ -191,17 +197,50 @@ def _sampled_again(
     if fit.verdict == "no pattern" or fit.partial_sill <= 0:
         return None
     scaled = np.log(values) if transform == "log" else values
-    whole = data_covariance(layout_of(places, support), fit.variogram)
-    noise = np.full(len(values), fit.nugget)
-    structured = whole - np.diag(noise)
-    weights = np.linalg.solve(whole, structured).T
-    middle = fit.mean + weights @ (scaled - fit.mean)
-    spread = structured - weights @ structured
-    tiny = 1e-9 * float(np.trace(whole)) / len(values)
-    root = np.linalg.cholesky(spread + tiny * np.eye(len(values)))
-    new = middle[:, None] + root @ random.normal(size=(len(values), draws))
-    new += np.sqrt(noise)[:, None] * random.normal(size=(len(values), draws))
+    again = _later_places(later, name) if support is None else None
+    new = _drawn(scaled, places, again, fit, support=support, random=random, draws=draws)
     mapped, _ = krige(
-        places, new, pack.grid.centres_m, fit.variogram, block_m=pack.grid.cell_m, support=support
-    )
+        places if again is None else again, new, pack.grid.centres_m, fit.variogram,
+        block_m=pack.grid.cell_m, support=support,
+    )  # fmt: skip
     return np.exp(mapped) if transform == "log" else mapped
+
+
+def _later_places(later: SampleSet, name: str) -> Floats | None:
+    """Single samples of the later season that measured a property, ``(m, 2)``; None if too few."""
+    one = later.properties.get(name)
+    if one is None or one.known.sum() < LEAST_SITES or supports_of(later, one.known) is not None:
+        return None
+    return later.east_north_m[one.known]
+
+
+@one_blas_thread()
+def _drawn(
+    scaled: Floats,
+    places: Floats,
+    again: Floats | None,
+    fit: VariogramFit,
+    *,
+    support: tuple[Support, ...] | None,
+    random: np.random.Generator,
+    draws: int,
+) -> Floats:
+    """Values measured again, ``(m, draws)``, given those measured ``(n,)``."""
+    count = len(places)
+    there = places if again is None else np.vstack([places, again])
+    layout = layout_of(there, support)
+    whole = data_covariance(layout, fit.variogram)
+    noise = noise_of(
+        layout, nugget=fit.variogram.nugget, lab_variance=fit.variogram.lab_variance
+    ) * np.ones(len(there))  # fmt: skip
+    structured = whole - np.diag(noise)
+    new = slice(0, count) if again is None else slice(count, None)
+    shared = structured[new, :count]
+    weights = np.linalg.solve(whole[:count, :count], shared.T).T
+    middle = fit.mean + weights @ (scaled - fit.mean)
+    spread = structured[new, new] - weights @ shared.T
+    tiny = 1e-9 * float(np.trace(whole)) / len(there)
+    root = np.linalg.cholesky(spread + tiny * np.eye(len(middle)))
+    told = middle[:, None] + root @ random.normal(size=(len(middle), draws))
+    told += np.sqrt(noise[new])[:, None] * random.normal(size=(len(middle), draws))
+    return told

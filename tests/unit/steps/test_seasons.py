@@ -14,6 +14,7 @@ from schorl.steps.season_map import change_map
 from schorl.steps.season_revisit import sites_wanted
 from schorl.steps.season_sites import fair_zones, site_pairs
 from schorl.steps.season_tests import ZoneData, zone_changes
+from schorl.steps.season_zones import agreement_by_chance
 from support.seasons import EAST, HIGH_M, NORTH, WIDE_M, halves, lattice, season
 
 PLACES = lattice(40)
@@ -186,3 +187,22 @@ def test_boron_balance_adds_up():
         assert row.change == pytest.approx(gained * 2.8, abs=0.01)
         assert row.recovery == pytest.approx((row.change + 0.2) / row.applied)
         assert row.recovery_low < row.recovery < row.recovery_high
+
+
+def test_new_sites_move_zones_more_by_chance_than_the_same_ones():
+    random = np.random.default_rng(3)
+    wave = np.sin((PLACES[:, 0] - EAST) / WIDE_M * 2 * np.pi)
+    boron = 0.6 + 0.25 * wave + random.normal(0, 0.05, len(PLACES))
+    pack = season(boron, places=PLACES, origin="clusters")
+    east = pack.grid.centres_m[:, 0]
+    pack = replace(
+        pack, surfaces={"boron": 0.6 + 0.25 * np.sin((east - EAST) / WIDE_M * 2 * np.pi)}
+    )
+    few = PLACES[:12] + 3.0
+    new = season(boron[:12], name="2026", places=few)
+    same, other = (
+        agreement_by_chance(pack, later.samples, random=np.random.default_rng(1), draws=12)
+        for later in (pack, new)
+    )
+    assert 0 < other[0] < same[0] < 1
+    assert 0 < other[1] < same[1] < 1
