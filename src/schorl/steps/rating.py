@@ -44,6 +44,8 @@ __all__ = [
 #: number of samples; twice this is the range that is shown.
 SAVING_ERROR = ((30, 0.09), (60, 0.06), (120, 0.05))
 FEW_SAMPLES = 3
+#: A flat rate that loses less over the whole field leaves nothing to save, kg B.
+LEAST_LOSS_KG = 1e-6
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -327,7 +329,7 @@ def plan_cost(boron_kg: float, loss_kg: float, settings: RunSettings) -> float |
 def _saving(value: tuple[PlanValue, ...], samples: int) -> tuple[float, float, float] | None:
     """Share of the flat rate's expected loss that zones save: low, middle, high."""
     zones, flat = value[0].loss_kg, value[1].loss_kg
-    if flat <= 0:
+    if flat <= LEAST_LOSS_KG:
         return None
     sizes, errors = zip(*SAVING_ERROR, strict=True)
     error = float(np.interp(samples, sizes, errors))

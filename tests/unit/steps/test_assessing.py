@@ -90,6 +90,16 @@ def test_targets_stay_under_the_ceiling():
     assert "RATE-PERENNIAL" in {one.code for one in assessed(crop="apple").findings}
 
 
+def test_own_targets_and_organic_ceilings_are_used_where_they_hold():
+    rows = (("", 0.0, 20.0, 0.7), ("", 20.0, 101.0, 0.9))
+    own = assessed(interpretation=Interpretation.OWN, own_targets=rows)
+    assert own.need.target_mg_kg == pytest.approx(0.7)
+    peat = {"clay": 15.0, "organic_matter": 30.0}
+    organic = assessed(soil=peat, bulk_density_g_cm3=0.5)
+    assert organic.need.ceiling_mg_kg == pytest.approx(3.0)
+    assert any(row["row"] == "organic" for row in organic.sources)
+
+
 def test_water_and_manure_lower_the_need():
     plain = assessed().need.need_mean_kg_ha
     fed = assessed(water_boron_mg_l=0.5, irrigation_mm=100.0, manure_boron_kg_ha=0.1)

@@ -330,6 +330,8 @@ def test_a_plan_and_rates_by_cell():
     assert len(none.rates_kg_ha) == 0
     bare = expected_loss_kg_ha(cells, 0.0, cost_ratio=1.0).sum() * 0.01
     assert none.loss_kg == pytest.approx(bare)
+    gap = plan_outcome(np.array([0, 2]), cells, job(), cell_ha=0.01)
+    assert gap.rates_kg_ha.tolist() == pytest.approx([own[0], 0.0, own[1]])
     half = plan_outcome(np.array([0, -1]), cells, job(), cell_ha=0.01)
     assert half.rates_kg_ha.tolist() == pytest.approx(own[:1])
     hot = replace(cells, hot=np.array([True, False]))
@@ -349,7 +351,9 @@ def test_between_boron_and_product():
     with pytest.raises(UsageProblem):
         boron_per_unit(Product(form=Form.GRANULE))
     with pytest.raises(UsageProblem):
-        boron_per_unit(Product(form=Form.SPRAY, compound="boric acid"))
+        boron_per_unit(Product(form=Form.SPRAY))
+    with pytest.raises(UsageProblem, match="powder"):
+        boron_per_unit(Product(form=Form.SPRAY, compound="boric acid", boron_pct=17.5))
     assert volume_known(GRANULE, Machine())
     assert not volume_known(liquid, Machine())
     assert volume_known(liquid, Machine(mix_g_b_l=2.0))
