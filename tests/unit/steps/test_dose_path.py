@@ -285,6 +285,18 @@ def test_which_limit_ruled():
     assert (absolute.by, absolute.boron_kg_ha) == (Limit.ABSOLUTE, pytest.approx(3.36))
 
 
+def test_the_lowest_cap_of_a_zones_cells_holds_and_the_ceiling_itself_is_full():
+    mixed = ruled_rate(need(rate_cap_kg_ha=np.array([0.4, 2.24])), job())
+    assert (mixed.by, mixed.boron_kg_ha) == (Limit.RATE_CAP, pytest.approx(0.4))
+    at = np.full(2, 2.0)
+    full = ruled_rate(need(boron_mg_kg=at, boron_location=at), job())
+    assert full.limits["soil ceiling"] == 0.0
+    assert full.boron_kg_ha == 0.0
+    assert "soil ceiling" not in ruled_rate(need(), job()).limits
+    low = need(ceiling_mg_kg=np.full(2, 0.5))
+    assert cell_rates_kg_ha(low, job()).tolist() == [0.0, 0.0]
+
+
 def test_the_best_rate_is_the_quantile_of_the_costs():
     cells = need()
     for ratio in (0.5, 1.0, 3.0):
