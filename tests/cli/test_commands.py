@@ -141,8 +141,10 @@ def test_the_same_bytes_with_any_threads_hash_seed_clock_zone_and_locale(tmp_pat
 
 
 STOPPED = """
-import sys, time
+import signal, sys, time
 from schorl.formats import pack
+# A shell's background job starts with interrupts ignored; a person at a terminal does not.
+signal.signal(signal.SIGINT, signal.default_int_handler)
 def ready(*_):
     print("ready", flush=True)
     time.sleep(60)
