@@ -35,8 +35,13 @@ def transform_points(
 
 
 def transform_geometry(geometry: shapely.Geometry, *, source: str, target: str) -> Any:
-    """Bring a geometry from one coordinate system to another, vertex by vertex, without height."""
+    """Bring a geometry from one coordinate system to another, vertex by vertex, without height.
+
+    Within one system nothing is computed: the vertices keep their bits.
+    """
     flat = shapely.force_2d(geometry)
+    if source == target:
+        return flat
     return shapely.transform(
         flat, lambda points: transform_points(points, source=source, target=target)
     )

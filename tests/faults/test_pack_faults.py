@@ -12,8 +12,9 @@ import pytest
 
 from schorl.errors import OutputProblem, UsageProblem
 from schorl.formats import whole_folder
-from schorl.formats.pack import complete_swaps, write_pack
+from schorl.formats.pack import write_pack
 from schorl.formats.verify import verify
+from schorl.formats.whole_folder import complete_swaps
 from support.example_record import example_record
 
 EXTRAS = {"report.html": b"<html></html>"}

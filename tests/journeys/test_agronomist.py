@@ -13,8 +13,9 @@ import numpy as np
 import pytest
 import shapely
 
-from schorl.formats.season import read_season
 from schorl.geodesy import area_ha
+from schorl.run.packs import identity_of, whole_record
+from schorl.steps.season_pack import season_pack
 from support.command import FIELDS, prescribed, run
 
 OUTLINE = FIELDS / "long_acre/2026/boundary.geojson"
@@ -122,7 +123,7 @@ def test_a_damaged_pack_is_refused_by_name(packs, tmp_path):
         stream.write(" ")
     code, answer = run("compare", tmp_path / "hurt", packs / "Long-Acre-2026", "--out", tmp_path)
     assert code == 3
-    assert {one["code"] for one in answer["findings"]} == {"SEASON-PACK"}
+    assert {one["code"] for one in answer["findings"]} == {"OUT-TOUCHED"}
     assert "prescription.geojson" in answer["findings"][0]["where"]
     assert not list(tmp_path.glob("*to*"))
 
@@ -233,8 +234,9 @@ def test_a_smaller_field_is_compared_on_the_common_ground(packs, tmp_path):
 
 
 def test_a_pack_in_another_metric_system_is_the_same_season(packs):
-    own = read_season(packs / "Long-Acre-2025")
-    moved = read_season(packs / "Long-Acre-2025", crs="EPSG:32632")
+    record, identity = (read(packs / "Long-Acre-2025") for read in (whole_record, identity_of))
+    own = season_pack(record, identity=identity)
+    moved = season_pack(record, identity=identity, crs="EPSG:32632")
     assert moved.crs == "EPSG:32632"
     np.testing.assert_array_equal(
         moved.samples.properties["boron"].values, own.samples.properties["boron"].values
@@ -242,7 +244,6 @@ def test_a_pack_in_another_metric_system_is_the_same_season(packs):
     for zone, other in zip(own.zones, moved.zones, strict=True):
         assert area_ha(other.area, crs=moved.crs) == pytest.approx(zone.area_ha, rel=1e-3)
     assert moved.surfaces["boron"].mean() == pytest.approx(own.surfaces["boron"].mean(), rel=0.01)
-    assert read_season(packs / "Long-Acre-2025").identity == own.identity
 
 
 @pytest.mark.parametrize(

@@ -8,15 +8,14 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from schorl.errors import OutputProblem, Refusal, SchorlError
+from schorl.errors import OutputProblem
 from schorl.findings import finding
-from schorl.formats.whole_folder import Rows, complete_swaps, listed, put_folder, sha256_of
+from schorl.formats.whole_folder import Rows, listed, put_folder, sha256_of
 from schorl.formats.writing import safe_name
-from schorl.geodesy import WGS84
 from schorl.model.record import RunRecord
 from schorl.model.summary import SCHEMA, summary
 
-__all__ = ["PackContents", "PackWritten", "complete_swaps", "read_pack", "safe_name", "write_pack"]
+__all__ = ["PackWritten", "safe_name", "write_pack"]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -25,28 +24,6 @@ class PackWritten:
 
     folder: Path
     files: tuple[tuple[str, int, str], ...]
-
-
-@dataclass(frozen=True, kw_only=True)
-class PackZone:
-    """A zone as a pack holds it, in longitude and latitude."""
-
-    number: int
-    kind: str
-    geometry: Any
-    area_ha: float
-
-
-@dataclass(frozen=True, eq=False, kw_only=True)
-class PackContents:
-    """What later steps need of an earlier pack."""
-
-    folder: Path
-    summary: dict[str, Any]
-    manifest: dict[str, Any]
-    crs: str  # of zone geometries
-    zones: tuple[PackZone, ...]
-    boron_kg_ha: tuple[float, ...]
 
 
 def prescription_files(record: RunRecord) -> tuple[str, ...]:
@@ -194,53 +171,3 @@ def _read_back(folder: Path) -> None:
                 for fault in seen.faults
             ]
         )
-
-
-def read_pack(folder: Path) -> PackContents:
-    """An earlier pack's record and zones.
-
-    Raises
-    ------
-    Refusal
-        Not a pack (exit 3).
-    """
-    import fiona
-    import shapely
-
-    complete_swaps(folder)
-    try:
-        record = json.loads((folder / "summary.json").read_text(encoding="utf-8"))
-        manifest = json.loads((folder / "manifest.json").read_text(encoding="utf-8"))
-        package = folder / "prescription.gpkg"
-        if not package.exists():
-            raise FileNotFoundError(2, "no such file", str(package))
-        with fiona.open(package, layer="zones") as layer:
-            shapes = {
-                int(row.properties["zone"]): shapely.geometry.shape(row.geometry) for row in layer
-            }
-        rows = record["zones"]
-        zones = tuple(
-            PackZone(
-                number=row["zone"], kind=row["kind"], geometry=shapes[row["zone"]],
-                area_ha=row["area_ha"],
-            )
-            for row in rows
-        )  # fmt: skip
-    except SchorlError:
-        raise
-    except (FileNotFoundError, NotADirectoryError) as reason:
-        missing = Path(reason.filename or folder).name
-        there = folder.is_dir()
-        what = f"not a pack: there is no {missing} in it" if there else "there is no such folder"
-        raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)]) from None
-    except Exception as reason:  # a folder that is not a pack fails in many ways
-        what = f"not a pack that can be read: {type(reason).__name__}: {reason}"
-        raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)]) from None
-    return PackContents(
-        folder=folder,
-        summary=record,
-        manifest=manifest,
-        crs=WGS84,
-        zones=zones,
-        boron_kg_ha=tuple(float(row["boron_kg_ha"]) for row in rows),
-    )

@@ -9,10 +9,11 @@ from pathlib import Path
 from schorl.errors import Refusal
 from schorl.findings import finding
 from schorl.formats.codec import Decoder, Encoder
+from schorl.formats.whole_folder import complete_swaps
 from schorl.model.record import RunRecord
 from schorl.model.summary import SCHEMA
 
-RECORD_FILE = "record.json.gz"
+RECORD_FILE, MANIFEST = "record.json.gz", "manifest.json"
 #: Most bytes a record is unpacked to: a million cells and all that is known of each.
 MOST_BYTES = 1_000_000_000
 
@@ -32,10 +33,15 @@ def read_record(folder: Path) -> RunRecord:
     Raises
     ------
     Refusal
-        No record in the pack, a later version's, or one that cannot be read (exit 3).
+        Not a pack; no record in it, a later version's, or one that cannot be read (exit 3).
     """
+    complete_swaps(folder)
     path = folder / RECORD_FILE
     if not path.is_file():
+        if not (folder / MANIFEST).is_file():
+            there = folder.is_dir()
+            what = f"there is no {MANIFEST} in it" if there else "there is no such folder"
+            raise Refusal([finding("OUT-NOT-PACK", where=str(folder), what=what)])
         what = f"the pack has no `{RECORD_FILE}`: an earlier version wrote it, or it was removed"
         raise _refusal(folder, what)
     try:

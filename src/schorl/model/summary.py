@@ -191,12 +191,12 @@ def _zone(record: RunRecord, place: int) -> dict[str, Any]:
         "chance_over_before": outlook["over_before"],
         "loss_kg": outlook["loss_kg"],
         "sureness": sureness[place] if place < len(sureness) else None,
-        "soil_mass_kg_ha_per_mg_kg": _soil_mass(record, place),
+        "soil_mass_kg_ha_per_mg_kg": soil_mass(record, place),
     }
     return row
 
 
-def _soil_mass(record: RunRecord, place: int) -> float | None:
+def soil_mass(record: RunRecord, place: int) -> float | None:
     """Mean over a zone's cells of kg B/ha for 1 mg/kg; None for a zone without a cell."""
     cells = record.prescription.zone_map.labels == place
     return plain(record.cell_need.mass_need[cells].mean()) if cells.any() else None

@@ -10,19 +10,16 @@ from typing import Any
 
 from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, finding
-from schorl.formats.record_file import read_record
-from schorl.formats.verify import verify
-from schorl.formats.whole_folder import sha256_of
 from schorl.intake.boundaries import read_areas
 from schorl.jobs import Job, check_job
 from schorl.model.field import Area
 from schorl.model.record import RunRecord
 from schorl.model.settings import Machine, Product
+from schorl.run.packs import named_source, whole_record
 from schorl.run.profiles import profile_named
 from schorl.run.settings import machine_notes, machine_of, product_of
 from schorl.steps.adapting import Change, adapt
 
-MOST_FAULTS = 6
 SECTIONS = ("machine", "product")
 
 
@@ -49,31 +46,8 @@ def adapt_pack(folder: Path, wanted: Wanted) -> RunRecord:
     """
     record = whole_record(folder)
     change, notes = _change(record, wanted)
-    source = f"{folder.name}, manifest {sha256_of((folder / 'manifest.json').read_bytes())}"
-    adapted = adapt(record, change, source=source).record
+    adapted = adapt(record, change, source=named_source(folder)).record
     return replace(adapted, findings=tuple(dict.fromkeys((*adapted.findings, *notes))))
-
-
-def whole_record(folder: Path) -> RunRecord:
-    """The record of a pack in which nothing is missing or touched.
-
-    Raises
-    ------
-    Refusal
-        With each fault that was found (exit 3).
-    """
-    record = read_record(folder)
-    seen = verify(folder)
-    if seen.whole:
-        return record
-    raise Refusal(
-        [
-            finding(
-                "OUT-TOUCHED", where=f"{folder.name}: {one.file}", what=f"{one.place}: {one.what}"
-            )
-            for one in seen.faults[:MOST_FAULTS]
-        ]
-    )
 
 
 def _change(record: RunRecord, wanted: Wanted) -> tuple[Change, tuple[Finding, ...]]:

@@ -7,19 +7,22 @@ from dataclasses import dataclass, replace
 from itertools import pairwise
 from pathlib import Path
 
+from schorl.agronomy.crops import removal_g_t, removal_row
 from schorl.errors import Refusal, UsageProblem
 from schorl.findings import Finding, finding
 from schorl.formats.change import write_change
-from schorl.formats.season import field_of, read_season, season_of
 from schorl.formats.whole_folder import Rows
 from schorl.formats.writing import safe_name
 from schorl.intake.applied import read_applied
 from schorl.model.change import SeasonChange, SeasonPack
 from schorl.model.change_summary import several
 from schorl.model.progress import Progress, silent
+from schorl.model.record import RunRecord
 from schorl.model.settings import AppliedBoron
+from schorl.run.packs import identity_of, whole_record
 from schorl.run.prescribing import versions
 from schorl.steps.comparing import compare
+from schorl.steps.season_pack import season_pack
 
 MANY = 2
 APPLIED_HINTS = {
@@ -59,11 +62,12 @@ def compare_packs(
     if len(folders) < MANY:
         what = f"{len(folders)} pack given; a comparison needs two or more"
         raise UsageProblem([finding("JOB-MISSING", where="compare", what=what)])
-    seasons = [season_of(one) for one in folders]
-    _check_seasons(given, seasons)
-    crs = field_of(folders[0]).crs
+    records = [whole_record(one) for one in folders]
+    _check_seasons(given, [one.settings.season for one in records])
+    crs = records[0].field.crs
     packs = [
-        _season(folder, season, given, crs) for folder, season in zip(folders, seasons, strict=True)
+        _season(record, identity_of(folder), given, crs)
+        for folder, record in zip(folders, records, strict=True)
     ]
     return tuple(
         _noted(compare(one, other, seed=seed, same_place_m=same_place_m, progress=progress))
@@ -79,22 +83,21 @@ def _check_seasons(given: Given, seasons: Sequence[str]) -> None:
         raise UsageProblem([finding("JOB-VALUE", where="compare", what=what)])
 
 
-def _season(folder: Path, season: str, given: Given, crs: str) -> SeasonPack:
-    pack = read_season(folder, crs=crs)
-    applied, notes = _applied(folder, pack, given.applied.get(season), given)
-    removed = _removed(pack, (given.yield_t_ha or {}).get(season))
-    return replace(
-        pack, applied=applied, removed_kg_ha=removed, findings=(*pack.findings, *notes)
-    )  # fmt: skip
+def _season(record: RunRecord, identity: str, given: Given, crs: str) -> SeasonPack:
+    pack = season_pack(record, identity=identity, crs=crs)
+    applied, notes = _applied(record, pack, given.applied.get(pack.season), given)
+    removed = _removed(pack, (given.yield_t_ha or {}).get(pack.season))
+    return replace(pack, applied=applied, removed_kg_ha=removed, findings=notes)
 
 
 def _applied(
-    folder: Path, pack: SeasonPack, path: Path | None, given: Given
+    record: RunRecord, pack: SeasonPack, path: Path | None, given: Given
 ) -> tuple[AppliedBoron | None, tuple[Finding, ...]]:
     if path is None:
         return None, ()
+    field = replace(record.field, boundary=pack.boundary, crs=pack.crs)
     reading = read_applied(
-        path, field=field_of(folder, crs=pack.crs), on=None, column=given.column, unit=given.unit,
+        path, field=field, on=None, column=given.column, unit=given.unit,
         boron_pct=given.boron_pct, form="", this_season=False, width_m=pack.working_width_m,
     )  # fmt: skip
     if reading.value is None:
@@ -112,8 +115,6 @@ def _removed(pack: SeasonPack, yield_t_ha: float | None) -> float | None:
     """Boron that the crop took away, from its yield and the table of removals."""
     if yield_t_ha is None:
         return None
-    from schorl.agronomy.crops import removal_g_t
-
     grams = removal_g_t(pack.crop)
     if grams is None:
         what = f"there is no figure for the boron that `{pack.crop}` takes away"
@@ -138,8 +139,6 @@ def _noted(change: SeasonChange) -> SeasonChange:
 
 def _removal_notes(pack: SeasonPack) -> list[Finding]:
     """The row behind the boron that a crop took away, with how far it was checked."""
-    from schorl.agronomy.crops import removal_row
-
     row = None if pack.removed_kg_ha is None else removal_row(pack.crop)
     if row is None:
         return []

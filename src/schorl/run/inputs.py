@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import os
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TypeVar
 
@@ -16,6 +16,7 @@ from schorl.model.reading import Reading, SampleHints
 from schorl.model.record import Recognition
 from schorl.model.samples import SampleSet
 from schorl.model.settings import AppliedBoron, ExtraLayer, RunSettings
+from schorl.model.zones import ZoneKind
 from schorl.run.settings import DEFAULT_WIDTH_M, Layers, default_notes, missing_facts, resolve
 
 T = TypeVar("T")
@@ -195,20 +196,21 @@ def _areas(given: str | None, folder: Path, field: Field, notes: Notebook) -> tu
 def _kept_zones(
     job: Job, folder: Path, field: Field, notes: Notebook
 ) -> tuple[tuple[tuple[int, Area], ...], tuple[int, ...]]:
-    from schorl.formats.pack import read_pack
     from schorl.geodesy import transform_geometry
+    from schorl.run.packs import whole_record
 
     given = job.zoning.keep_zones_of
     path = located(folder, given, notes) if given else None
     if path is None:
         return (), ()
-    contents = read_pack(path)
+    record = whole_record(path)
+    zone_map = record.prescription.zone_map
     kept = tuple(
-        (zone.number, transform_geometry(zone.geometry, source=contents.crs, target=field.crs))
-        for zone in contents.zones
-        if zone.kind == "zone"
+        (zone.number, transform_geometry(zone.geometry, source=record.field.crs, target=field.crs))
+        for zone in zone_map.zones
+        if zone.kind is ZoneKind.ZONE
     )
-    return kept, tuple(contents.summary["zoning"].get("retired_numbers", ()))
+    return kept, zone_map.retired_numbers
 
 
 def _applied(
@@ -252,25 +254,11 @@ def _applied(
 
 
 def _applied_of_pack(part: AppliedPart, path: Path, field: Field) -> AppliedBoron:
-    from schorl.formats.pack import read_pack
-    from schorl.geodesy import transform_geometry
+    from schorl.run.packs import whole_record
+    from schorl.steps.given import prescribed_boron
 
-    contents = read_pack(path)
-    areas = tuple(
-        (transform_geometry(zone.geometry, source=contents.crs, target=field.crs), rate)
-        for zone, rate in zip(contents.zones, contents.boron_kg_ha, strict=True)
-    )
-    total = sum(
-        zone.area_ha * rate for zone, rate in zip(contents.zones, contents.boron_kg_ha, strict=True)
-    )
-    return AppliedBoron(
-        on=part.on,
-        kg_ha=total / sum(zone.area_ha for zone in contents.zones),
-        form=part.form,
-        areas=areas,
-        this_season=part.this_season,
-        source=path.name,
-    )
+    given = prescribed_boron(whole_record(path), crs=field.crs, source=path.name)
+    return replace(given, on=part.on, form=part.form, this_season=part.this_season)
 
 
 def _extras(job: Job, folder: Path, field: Field, notes: Notebook) -> tuple[ExtraLayer, ...]:

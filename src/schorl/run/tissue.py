@@ -11,12 +11,12 @@ from schorl.agronomy.crops import crop_named
 from schorl.agronomy.tissue_checks import leaf_range
 from schorl.errors import Refusal, UsageProblem
 from schorl.findings import finding
-from schorl.formats.whole_folder import sha256_of
 from schorl.intake.tissue import read_tissue
 from schorl.jobs import check_job
 from schorl.model.settings import Form, Override
 from schorl.model.tissue import LeafRange
-from schorl.run.adapting import read_sections, whole_record
+from schorl.run.adapting import read_sections
+from schorl.run.packs import named_source, whole_record
 from schorl.run.settings import machine_of, product_of
 from schorl.steps.leaf_pass import LeafAnswer, LeafJob, check_leaves
 
@@ -67,7 +67,6 @@ def tissue_answer(folder: Path, table: Path, wanted: LeafWanted) -> LeafAnswer:
     if "working_width_m" not in values["machine"]:
         width = record.settings.machine.working_width_m
         machine = replace(machine, working_width_m=width)
-    source = f"{folder.name}, manifest {sha256_of((folder / 'manifest.json').read_bytes())}"
     return check_leaves(
         record,
         reading.value,
@@ -76,7 +75,7 @@ def tissue_answer(folder: Path, table: Path, wanted: LeafWanted) -> LeafAnswer:
             season=wanted.season or f"{record.settings.season}-leaves",
             dose_kg_ha=wanted.dose_kg_ha, override=override,
         ),
-        source=source,
+        source=named_source(folder),
     )  # fmt: skip
 
 

@@ -8,8 +8,10 @@ import numpy as np
 import shapely
 
 from schorl.agronomy.tables import limit
+from schorl.geodesy import transform_geometry
 from schorl.model.arrays import Floats
 from schorl.model.field import CellGrid
+from schorl.model.record import RunRecord
 from schorl.model.samples import SampleSet
 from schorl.model.settings import AppliedBoron, RunSettings
 
@@ -37,6 +39,17 @@ def boron_given(
             credit += given
         used += given if one.this_season else given * _share_left(one, sampled, clay_pct)
     return credit, used
+
+
+def prescribed_boron(record: RunRecord, *, crs: str, source: str) -> AppliedBoron:
+    """What an earlier prescription gave each of its zones, its areas in the system ``crs``."""
+    zones, rates = record.prescription.zone_map.zones, record.prescription.rates
+    areas = tuple(
+        (transform_geometry(zone.geometry, source=record.field.crs, target=crs), rate.boron_kg_ha)
+        for zone, rate in zip(zones, rates, strict=True)
+    )
+    mean = record.prescription.boron_kg / max(sum(rate.area_ha for rate in rates), 1e-9)
+    return AppliedBoron(on=None, kg_ha=mean, areas=areas, source=source)
 
 
 def given_per_cell(one: AppliedBoron, grid: CellGrid) -> Floats:

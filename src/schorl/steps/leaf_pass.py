@@ -20,7 +20,7 @@ from schorl.model.record import RunRecord
 from schorl.model.settings import AppliedBoron, Machine, Override, Placement, Product, RunSettings
 from schorl.model.tissue import LeafRange, LeafVerdict, TissueSample, ZoneLeaves
 from schorl.model.zones import Zone, ZoneKind
-from schorl.steps.given import given_per_cell
+from schorl.steps.given import given_per_cell, prescribed_boron
 from schorl.steps.rating import ZoneRows, rated_zones
 from schorl.steps.zone_rates import Ruled, chance_limit_kg_ha, part_of, unevenness_of
 from schorl.zoning.sampled import label_in
@@ -151,13 +151,8 @@ def _given_this_season(record: RunRecord, place: int) -> float:
 
 def _with_pack(record: RunRecord, source: str) -> tuple[AppliedBoron, ...]:
     """What the season has had, with the pack that the pass comes on top of."""
-    prescription = record.prescription
-    areas = tuple(
-        (zone.geometry, rate.boron_kg_ha)
-        for zone, rate in zip(prescription.zone_map.zones, prescription.rates, strict=True)
-    )
-    mean = prescription.boron_kg / max(sum(rate.area_ha for rate in prescription.rates), 1e-9)
-    pack = AppliedBoron(on=None, kg_ha=mean, areas=areas, this_season=True, source=source)
+    pack = prescribed_boron(record, crs=record.field.crs, source=source)
+    pack = replace(pack, this_season=True)
     return (*record.settings.crop.applied, pack)
 
 
