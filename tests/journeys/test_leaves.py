@@ -130,3 +130,40 @@ def test_what_is_never_assumed_is_asked(pack, tmp_path):
     assert "TISSUE-OWN" in {one["code"] for one in answer["findings"]}
     folder = Path(answer["result"]["pack"]["folder"])
     assert "A. Adviser" in (folder / "READ_ME.txt").read_text("utf-8")
+
+
+@pytest.mark.parametrize(
+    ("given", "what"),
+    [
+        (("--toxic-above", "150"), "toxic above 150 mg/kg alone is no range"),
+        (("--toxic-above", "150", "--range", "alfalfa top"), "alone is no range"),
+        (("--deficient-below", "25", "--range", "alfalfa top"), "both the row"),
+        (("--deficient-below", "40", "--sufficient-from", "30"), "deficient below 40 lies above"),
+        (("--sufficient-from", "30", "--toxic-above", "20"), "sufficient from 30 lies above"),
+        (("--deficient-below", "30", "--toxic-above", "20"), "deficient below 30 lies above"),
+    ],
+)  # fmt: skip
+def test_half_a_range_or_one_that_falls_is_refused(pack, tmp_path, given, what):
+    code, answer = run(
+        "tissue",
+        pack,
+        LEAVES,
+        *given,
+        "--by",
+        "A. Adviser",
+        "--boron-g-l",
+        "150",
+        "--out",
+        tmp_path,
+    )
+    assert (code, answer["findings"][0]["code"]) == (2, "JOB-VALUE")
+    assert what in answer["findings"][0]["what"]
+    assert not list(tmp_path.iterdir())
+
+
+def test_a_dose_above_the_foliar_cap_is_held_to_it(pack, tmp_path):
+    code, answer = run("tissue", pack, LEAVES, *RANGE, "--dose-kg-ha", "2", "--out", tmp_path)
+    assert code == 0, answer["findings"]
+    zone = zones_of(Path(answer["result"]["pack"]["folder"]))[1]
+    assert zone["boron_kg_ha"] <= 0.56 + 1e-9
+    assert zone["limits_kg_ha"]["rate cap"] == 0.56

@@ -24,6 +24,7 @@ from schorl.agronomy.chances import chance_over_ceiling, expected_loss_kg_ha
 from schorl.agronomy.crops import crop_named
 from schorl.agronomy.tables import limit, table
 from schorl.intake.quantities import FACTORS
+from schorl.machinery.plan import machine_plan
 from schorl.machinery.rates import boron_per_unit, machine_rate
 from schorl.model.prescription import CellNeed
 from schorl.model.settings import (
@@ -229,6 +230,52 @@ def test_a_more_sensitive_next_crop_never_raises_a_rate(boron, clay, matter, cla
         for name in (milder, harder)
     ]  # fmt: skip
     assert given_rates[1] <= given_rates[0] + 1e-9
+
+
+def _milder_and_harder():
+    """Pairs of crops with one need, the second at least as sensitive and its cap no higher."""
+    order = list(TEXTURES)
+    rows = table("crops")
+    return [
+        (one["id"], other["id"])
+        for one in rows
+        for other in rows
+        if one["need"] == other["need"]
+        and order.index(one["ceiling_class"]) < order.index(other["ceiling_class"])
+        and float(one["rate_cap_kg_ha"]) >= float(other["rate_cap_kg_ha"])
+    ]
+
+
+@given(
+    boron=st.floats(0.02, 3.0), clay=st.floats(1, 60), matter=st.floats(0.3, 9),
+    pair=st.sampled_from(_milder_and_harder()),
+    placement=st.sampled_from(["broadcast", "incorporated", "foliar"]),
+)  # fmt: skip
+@CASES
+def test_a_more_sensitive_crop_never_gets_more(boron, clay, matter, pair, placement):
+    """Crops of one need on the same soil, each followed by itself."""
+    milder, harder = (
+        ruled(
+            crop, boron, clay_pct=clay, organic_matter_pct=matter, placement=placement
+        ).boron_kg_ha
+        for crop in pair
+    )
+    assert harder <= milder + 1e-9
+
+
+@given(soils(), jobs(), st.lists(st.floats(0.01, 30.0), min_size=2, max_size=2))
+@CASES
+def test_product_times_its_share_is_boron(cells, job, areas_ha):
+    """Zone by zone and in all, whatever the machine did to the rates."""
+    boron = plan_outcome(np.arange(len(cells.hot)) % 2, cells, job, cell_ha=0.01).rates_kg_ha
+    zones = list(zip(areas_ha, boron.tolist(), strict=False))
+    plan = machine_plan(zones, job.product, job.machine, placement=job.placement)
+    share = job.product.boron_pct / 100.0
+    given_kg_ha = np.array(plan.boron_kg_ha)
+    assert np.array(plan.product_rates) * share == pytest.approx(given_kg_ha, rel=1e-12, abs=1e-15)
+    product = sum(area * rate for (area, _), rate in zip(zones, plan.product_rates, strict=True))
+    total = sum(area * rate for (area, _), rate in zip(zones, plan.boron_kg_ha, strict=True))
+    assert product * share == pytest.approx(total, rel=1e-12, abs=1e-15)
 
 
 @given(

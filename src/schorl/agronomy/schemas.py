@@ -158,7 +158,7 @@ SCHEMAS: Mapping[str, Schema] = MappingProxyType(
                 "deficient_below": number(1, 100, needed=False),
                 "sufficient_from": number(1, 200, needed=False),
                 "sufficient_to": number(1, 300, needed=False),
-                "toxic_above": number(20, 1000, needed=False),
+                "toxic_above": number(10, 1000, needed=False),
             },
             units=frozenset({"mg/kg dry matter"}),
             rising=("deficient_below", "sufficient_from", "sufficient_to", "toxic_above"),

@@ -7,7 +7,8 @@ from typing import Any
 
 import click
 
-from schorl.cli.frame import Answer, Manner, run_command, with_manner
+from schorl.cli.frame import Answer, Manner, folder_part, run_command, with_manner
+from schorl.cli.options import product_said, with_product
 
 FILE = click.Path(path_type=Path)
 EPILOG = """\b
@@ -20,12 +21,8 @@ Examples:
 
 @click.command("adapt", epilog=EPILOG, short_help="Same boron, other product, machine, controller.")
 @click.argument("pack", type=FILE)
-@click.option("--machine", type=FILE, help="TOML file with a job's [machine], and [product].")
+@with_product
 @click.option("--form", type=click.Choice(["granule", "spray"]), help="What leaves the machine.")
-@click.option("--boron-pct", type=float, help="Boron in the product, % by weight.")
-@click.option("--boron-g-l", type=float, help="Boron in a liquid product, g/L.")
-@click.option("--density-kg-l", type=float, help="Density of a liquid product.")
-@click.option("--product-name", type=str, help="Name of the product, for the sheet.")
 @click.option("--profile", type=str, help="What the controller takes: a name, or a TOML file.")
 @click.option("--keep-off", type=FILE, help="More areas that must not be treated.")
 @click.option("--keep-off-m", type=click.FloatRange(0), default=0.0, help="Untreated strip inside.")
@@ -48,14 +45,9 @@ def command(pack: Path, as_json: bool, quiet: bool, verbose: int, **given: Any) 
         from schorl.run.adapting import Wanted, adapt_pack
         from schorl.run.prescribing import write_record
 
-        named = {
-            "form": given["form"], "boron_pct": given["boron_pct"],
-            "boron_g_l": given["boron_g_l"], "density_kg_l": given["density_kg_l"],
-            "name": given["product_name"],
-        }  # fmt: skip
         wanted = Wanted(
             machine_file=given["machine"],
-            product={key: value for key, value in named.items() if value is not None},
+            product=product_said(given),
             profile=given["profile"],
             keep_off=given["keep_off"],
             keep_off_m=given["keep_off_m"],
@@ -66,8 +58,7 @@ def command(pack: Path, as_json: bool, quiet: bool, verbose: int, **given: Any) 
         written = write_record(
             record, target, replace_old=given["replace"], progress=manner.progress
         )
-        files = [{"path": path, "bytes": size, "sha256": sha} for path, size, sha in written.files]
-        result = summary(record) | {"pack": {"folder": str(written.folder), "files": files}}
+        result = summary(record) | {"pack": folder_part(written.folder, written.files)}
         text = closing_table(record) + f"\npack: {written.folder}"
         return Answer(result=result, text=text, findings=record.findings)
 

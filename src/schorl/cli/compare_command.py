@@ -7,7 +7,7 @@ from typing import Any
 
 import click
 
-from schorl.cli.frame import Answer, Manner, run_command, with_manner
+from schorl.cli.frame import Answer, Manner, folder_part, run_command, with_manner
 
 FILE = click.Path(path_type=Path)
 EPILOG = """\b
@@ -95,10 +95,9 @@ def command(
         )
         folder = (out or packs[0].parent) / change_name(changes)
         rows = write_changes(changes, folder, replace_old=replace)
-        files = [{"path": path, "bytes": size, "sha256": sha} for path, size, sha in rows]
         text = "\n\n".join(change_table(one) for one in changes) + f"\nwritten: {folder}"
         found = tuple(dict.fromkeys(note for one in changes for note in one.findings))
-        result = several(changes) | {"written": {"folder": str(folder), "files": files}}
+        result = several(changes) | {"written": folder_part(folder, rows)}
         return Answer(result=result, text=text, findings=found)
 
     run_command("compare", manner, work)

@@ -13,6 +13,7 @@ import sys
 import traceback
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from pathlib import Path
 from typing import Any, NoReturn
 
 import click
@@ -50,6 +51,12 @@ class Manner:
         from schorl.cli.progress import terminal_progress
 
         return terminal_progress() if sys.stderr.isatty() and not self.quiet else silent
+
+
+def folder_part(folder: Path, files: Sequence[tuple[str, int, str]]) -> dict[str, Any]:
+    """A folder that was written, with path, bytes and checksum of its files."""
+    rows = [{"path": path, "bytes": size, "sha256": sha256} for path, size, sha256 in files]
+    return {"folder": str(folder), "files": rows}
 
 
 def with_manner(command: Callable[..., Any]) -> Callable[..., Any]:

@@ -50,7 +50,7 @@ FACTS: tuple[tuple[str, str, Any, str], ...] = (
     ("--depth-cm", "samples.depth_cm", float, "Sampling depth."),
     ("--method", "samples.method", str, 'Boron extraction: "hot water", "mehlich-3", ...'),
     ("--laboratory", "samples.laboratory", str, "Name of the laboratory, for the record."),
-    ("--lab-sd-pct", "samples.lab_relative_sd_pct", float, "Laboratory repeatability, % [15]."),
+    ("--lab-sd-pct", "samples.lab_relative_sd_pct", float, "Laboratory repeatability, %."),
     ("--clay-pct", "samples.clay_pct", float, "One clay figure for the whole field."),
     ("--organic-matter-pct", "samples.organic_matter_pct", float, "One organic matter figure."),
     ("--cores", "samples.cores", int, "Cores in each composite."),
@@ -138,6 +138,31 @@ def with_facts(command: Callable[..., Any]) -> Callable[..., Any]:
     for flag, place, kind, text in reversed(FACTS):
         command = click.option(flag, _name(place), type=kind, default=None, help=text)(command)
     return command
+
+
+#: Options of a product and machine that a written pack is taken to, by key of a job's [product].
+PRODUCT: tuple[tuple[str, str, Any, str], ...] = (
+    ("--boron-pct", "boron_pct", float, "Boron in the product, % by weight."),
+    ("--boron-g-l", "boron_g_l", float, "Boron in a liquid product, g/L."),
+    ("--density-kg-l", "density_kg_l", float, "Density of a liquid product."),
+    ("--product-name", "name", str, "Name of the product, for the sheet."),
+)
+
+
+def with_product(command: Callable[..., Any]) -> Callable[..., Any]:
+    """Add the options of a product, and a file with a machine's figures."""
+    said = "TOML file with a job's [machine], and [product]."
+    command = click.option("--machine", type=FILE, help=said)(command)
+    for flag, key, kind, text in reversed(PRODUCT):
+        command = click.option(flag, f"product__{key}", type=kind, help=text)(command)
+    return command
+
+
+def product_said(options: Mapping[str, Any]) -> dict[str, Any]:
+    """Keys of a job's [product] that were given."""
+    keys = [key for _, key, _, _ in PRODUCT]
+    said = {key: options[f"product__{key}"] for key in keys} | {"form": options.get("form")}
+    return {key: value for key, value in said.items() if value is not None}
 
 
 def _name(place: str) -> str:

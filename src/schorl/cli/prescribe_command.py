@@ -7,7 +7,7 @@ from typing import Any
 
 import click
 
-from schorl.cli.frame import Answer, Manner, run_command, with_manner
+from schorl.cli.frame import Answer, Manner, folder_part, run_command, with_manner
 from schorl.cli.options import job_of, with_facts
 
 EPILOG = """\b
@@ -57,10 +57,7 @@ def command(
         record = survey(inputs, progress=manner.progress)
         target = target_folder / pack_name(record)
         written = write_record(record, target, replace_old=replace, progress=manner.progress)
-        files = [
-            {"path": path, "bytes": size, "sha256": sha256} for path, size, sha256 in written.files
-        ]
-        result = summary(record) | {"pack": {"folder": str(written.folder), "files": files}}
+        result = summary(record) | {"pack": folder_part(written.folder, written.files)}
         text = closing_table(record) + f"\npack: {written.folder}"
         return Answer(result=result, text=text, findings=record.findings)
 

@@ -7,7 +7,8 @@ from typing import Any
 
 import click
 
-from schorl.cli.frame import Answer, Manner, run_command, with_manner
+from schorl.cli.frame import Answer, Manner, folder_part, run_command, with_manner
+from schorl.cli.options import product_said, with_product
 
 FILE = click.Path(path_type=Path)
 EPILOG = """\b
@@ -30,12 +31,8 @@ Examples:
 @click.option("--sufficient-from", type=click.FloatRange(1, 300), help="Own range, mg/kg.")
 @click.option("--toxic-above", type=click.FloatRange(10, 2000), help="Own range, mg/kg.")
 @click.option("--by", type=str, default="", help="Person who answers for an own range.")
-@click.option("--dose-kg-ha", type=click.FloatRange(0.01, 0.56), help="Boron of the pass [0.28].")
-@click.option("--boron-g-l", type=float, help="Boron in the liquid, g/L.")
-@click.option("--boron-pct", type=float, help="Boron in the liquid, % by weight.")
-@click.option("--density-kg-l", type=float, help="Density of the liquid.")
-@click.option("--product-name", type=str, help="Name of the product, for the sheet.")
-@click.option("--machine", type=FILE, help="TOML file with a job's [machine], and [product].")
+@click.option("--dose-kg-ha", type=click.FloatRange(0, min_open=True), help="Boron of the pass.")
+@with_product
 @click.option("--season", type=str, help="Name of the pass [SEASON-leaves].")
 @click.option("--out", type=FILE, default=None, help="Folder the pass's pack is written into.")
 @click.option("--replace", is_flag=True, help="Put the new pack in the place of an older one.")
@@ -67,9 +64,7 @@ def command(
             written = write_record(
                 answer.record, target, replace_old=given["replace"], progress=manner.progress
             )
-            files = [{"path": p, "bytes": size, "sha256": sha} for p, size, sha in written.files]
-            held = {"folder": str(written.folder), "files": files}
-            result = summary(answer.record) | {"pack": held}
+            result = summary(answer.record) | {"pack": folder_part(written.folder, written.files)}
             text += f"\n\n{closing_table(answer.record)}\npack: {written.folder}"
         return Answer(result=result, text=text, findings=answer.findings)
 
@@ -77,12 +72,8 @@ def command(
 
 
 def _wanted(kind: Any, given: dict[str, Any]) -> Any:
-    product = {
-        "boron_g_l": given["boron_g_l"], "boron_pct": given["boron_pct"],
-        "density_kg_l": given["density_kg_l"], "name": given["product_name"],
-    }  # fmt: skip
     return kind(
-        product={key: value for key, value in product.items() if value is not None},
+        product=product_said(given),
         machine_file=given["machine"], range_row=given["range_row"],
         deficient_below=given["deficient_below"], sufficient_from=given["sufficient_from"],
         toxic_above=given["toxic_above"], by=given["by"], dose_kg_ha=given["dose_kg_ha"],

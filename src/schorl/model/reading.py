@@ -36,7 +36,7 @@ class SampleHints:
     report_depth_cm: float | None = None  # depth basis of lb/acre and kg/ha figures
     sampled_on: date | None = None
     laboratory: str = ""
-    lab_relative_sd: float = 0.15
+    lab_relative_sd: float | None = None  # share of the value
     clay_pct: float | None = None
     organic_matter_pct: float | None = None
     cores: int | None = None

@@ -56,7 +56,8 @@ class Campaign:
     """How and when the samples were taken and analysed.
 
     ``method`` is the boron extraction ("hot water", "mehlich-3", ...), ``depth_cm`` the sampling
-    depth, ``lab_relative_sd`` the laboratory's repeatability as a share of the value.
+    depth, ``lab_relative_sd`` the laboratory's repeatability for boron as a share of the value, None
+    where nobody said.
     """
 
     method: str
@@ -64,7 +65,7 @@ class Campaign:
     sampled_on: date | None = None
     laboratory: str = ""
     per_volume: bool = False
-    lab_relative_sd: float = 0.15
+    lab_relative_sd: float | None = None
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

@@ -6,6 +6,7 @@ from dataclasses import fields, is_dataclass
 from enum import StrEnum
 from typing import Any
 
+from schorl.agronomy.laboratory import lab_relative_sd
 from schorl.findings import Severity
 from schorl.model.record import RunRecord
 from schorl.model.samples import PROPERTY_UNITS
@@ -95,11 +96,12 @@ def _sample_table(record: RunRecord) -> Safe:
             ]
         )
     when = "" if campaign.sampled_on is None else f", {campaign.sampled_on.isoformat()}"
+    assumed = " (not said: assumed)" if campaign.lab_relative_sd is None else ""
     said = (
         f"{len(samples)} samples ({', '.join(sorted(set(samples.kind)))}), boron by "
         f"{campaign.method}, 0 to {campaign.depth_cm:g} cm{when}"
         f"{', ' + campaign.laboratory if campaign.laboratory else ''}; laboratory repeatability "
-        f"{100 * campaign.lab_relative_sd:.0f} % of the value."
+        f"{100 * lab_relative_sd(campaign):.0f} % of the value{assumed}."
     )
     declared = ", ".join(f"{name} {value:g}" for name, value in samples.constants.items())
     more = tag("p", f"Declared, not measured: {declared}.") if declared else ""

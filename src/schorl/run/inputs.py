@@ -129,10 +129,10 @@ def hints_of(job: Job, folder: Path) -> SampleHints:
     """What the job says about the laboratory file."""
     part = job.samples
     assert part is not None  # asked for in read_inputs
-    relative_sd = (part.lab_relative_sd_pct or 15.0) / 100.0
+    said_pct = part.lab_relative_sd_pct
     plain = part.model_dump(exclude={"file", "lab_relative_sd_pct", "zone_layer", "strike_out"})
     return SampleHints(
-        lab_relative_sd=relative_sd,
+        lab_relative_sd=None if said_pct is None else said_pct / 100.0,
         zone_layer=beside(folder, part.zone_layer) if part.zone_layer else None,
         strike_out=tuple(part.strike_out),
         confirmed=tuple(job.crop.confirmed_high),

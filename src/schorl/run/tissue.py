@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
@@ -79,17 +80,36 @@ def tissue_answer(folder: Path, table: Path, wanted: LeafWanted) -> LeafAnswer:
     )  # fmt: skip
 
 
+def _check_order(low: float | None, enough: float | None, toxic: float | None) -> None:
+    """Deficient, sufficient and toxic leaf boron must rise."""
+    named = [("deficient below", low), ("sufficient from", enough), ("toxic above", toxic)]
+    given = [(name, value) for name, value in named if value is not None]
+    faults = [
+        f"{name} {value:g} lies above {other} {next_value:g}"
+        for (name, value), (other, next_value) in pairwise(given)
+        if value > next_value
+    ]
+    if faults:
+        raise UsageProblem([finding("JOB-VALUE", where="tissue", what=what) for what in faults])
+
+
 def _range(crop: str, wanted: LeafWanted) -> tuple[LeafRange, Override | None]:
     own = (wanted.deficient_below, wanted.sufficient_from)
     if own == (None, None):
+        if wanted.toxic_above is not None:
+            what = f"toxic above {wanted.toxic_above:g} mg/kg alone is no range"
+            hint = "give `--deficient-below X` or `--sufficient-from X` with it"
+            raise UsageProblem([finding("JOB-VALUE", where="tissue", what=what, hint=hint)])
         return leaf_range(crop, row=wanted.range_row), None
+    if wanted.range_row is not None:
+        what = f"both the row `{wanted.range_row}` of the table and an own range were given"
+        hint = "give one of the two"
+        raise UsageProblem([finding("JOB-VALUE", where="tissue", what=what, hint=hint)])
     if not wanted.by.strip():
         what = "an own range of leaf boron needs the person who answers for it"
         raise UsageProblem([finding("JOB-MISSING", where="tissue", what=what, hint="give `--by`")])
     low, enough = own
-    if low is not None and enough is not None and low > enough:
-        what = f"deficient below {low:g} lies above sufficient from {enough:g}"
-        raise UsageProblem([finding("JOB-VALUE", where="tissue", what=what)])
+    _check_order(low, enough, wanted.toxic_above)
     held = LeafRange(
         part="as sampled", stage="", deficient_below=low, sufficient_from=enough,
         toxic_above=wanted.toxic_above, row=f"own range of {wanted.by}", status="own",

@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 import shapely
 
+from schorl.agronomy.laboratory import lab_relative_sd
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.geodesy import area_ha
@@ -225,7 +226,7 @@ def _pair_error(before: SeasonPack, after: SeasonPack, pairs: SitePairs) -> floa
     squares = [
         float(np.mean(composite_error_mg_kg(
             values, pack.samples.cores[chosen],
-            lab_relative_sd=pack.samples.campaign.lab_relative_sd,
+            lab_relative_sd=lab_relative_sd(pack.samples.campaign),
         ) ** 2))
         for values, chosen, pack in (
             (pairs.before_mg_kg, pairs.before, before), (pairs.after_mg_kg, pairs.after, after),
@@ -253,7 +254,7 @@ def _map(
         )
     grid = lay_grid(common, cell_m=max(before.grid.cell_m, after.grid.cell_m))
     level = np.sqrt(0.5 * (np.mean(pairs.before_mg_kg**2) + np.mean(pairs.after_mg_kg**2)))
-    relative = max(before.samples.campaign.lab_relative_sd, after.samples.campaign.lab_relative_sd)
+    relative = max(lab_relative_sd(one.samples.campaign) for one in (before, after))
     return (
         change_map(
             pairs.east_north_m[points], pairs.change_mg_kg[points], grid,

@@ -55,6 +55,8 @@ def _names(samples: SampleSet, settings: RunSettings) -> Iterator[str]:
     yield "recovery-next-test"
     if settings.placement in (Placement.BROADCAST, Placement.INCORPORATED):
         yield "least-worth"
+    if samples.campaign.lab_relative_sd is None:
+        yield "lab-sd"
     if samples.campaign.depth_cm > limit("need-depth-most"):
         yield "need-depth-most"
     if crop.incorporation_cm is None:
@@ -69,6 +71,7 @@ def _names(samples: SampleSet, settings: RunSettings) -> Iterator[str]:
         yield "leach-split-share"
     if crop.applied:
         yield from ("residual-sand", "residual-loam", "residual-clay")
+        yield from ("sandy-clay-most", "loam-clay-most")
     yield from _of_properties(samples.properties)
 
 

@@ -66,9 +66,11 @@ def given_per_cell(one: AppliedBoron, grid: CellGrid) -> Floats:
 
 def _share_left(one: AppliedBoron, sampled: date | None, clay_pct: Floats) -> Floats:
     years = np.where(
-        clay_pct < 10,
+        clay_pct < limit("sandy-clay-most"),
         limit("residual-sand"),
-        np.where(clay_pct <= 35, limit("residual-loam"), limit("residual-clay")),
+        np.where(
+            clay_pct <= limit("loam-clay-most"), limit("residual-loam"), limit("residual-clay")
+        ),
     )
     if one.on is None or sampled is None:
         return np.ones(len(years))  # no dates: counted in full, the careful side

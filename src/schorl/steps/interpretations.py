@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import replace
 
+from schorl.agronomy.tables import limit
 from schorl.errors import SchorlError
 from schorl.findings import Finding, finding
 from schorl.model.field import CellGrid
@@ -15,8 +16,6 @@ from schorl.model.zones import ZoneKind, ZoneMap
 from schorl.steps.assessing import assess_cells
 from schorl.steps.zone_rates import part_of, ruled_rate
 
-#: Rates this far apart (kg B/ha) decide a zone differently; treating or not always does.
-APART_KG_HA = 0.30
 OTHERS = (Interpretation.CROP_NEED, Interpretation.TEXTURE_LINE, Interpretation.CLASS_TABLE)
 
 
@@ -56,7 +55,8 @@ def _named(other: Interpretation, settings: RunSettings) -> str:
 
 
 def _decides(one: float, other: float) -> bool:
-    return abs(one - other) >= APART_KG_HA or (one > 0) != (other > 0)
+    """Rates a table's figure apart decide a zone differently; treating or not always does."""
+    return abs(one - other) >= limit("reading-apart") or (one > 0) != (other > 0)
 
 
 def _rates_by(

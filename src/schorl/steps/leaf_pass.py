@@ -25,9 +25,6 @@ from schorl.steps.rating import ZoneRows, rated_zones
 from schorl.steps.zone_rates import Ruled, chance_limit_kg_ha, part_of, unevenness_of
 from schorl.zoning.sampled import label_in
 
-#: A pass smaller than this is not worth driving, kg B/ha (a proposal).
-LEAST_PASS_KG_HA = 0.05
-
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LeafJob:
@@ -38,7 +35,6 @@ class LeafJob:
     machine: Machine
     season: str
     dose_kg_ha: float | None = None
-    lab_relative: float = 0.15
     override: Override | None = None
 
 
@@ -73,7 +69,7 @@ def check_leaves(
     for place, zone in enumerate(record.prescription.zone_map.zones):
         seen = zone_leaves(
             zone.number, own.get(zone.number, ()), job.held, crop=crop.name,
-            lab_relative=job.lab_relative,
+            lab_relative=limit("leaf-lab-sd") / 100.0,
         )  # fmt: skip
         one = planned.ruled(place, seen)
         found += _zone_findings(zone, seen, one)
@@ -191,7 +187,7 @@ class _Pass:
         }
         wanted = min(limits.values())
         by = next(Limit(name) for name, value in limits.items() if value == wanted)
-        if wanted < LEAST_PASS_KG_HA:
+        if wanted < limit("least-pass"):
             wanted = 0.0
         return Ruled(need_kg_ha=dose, wanted_kg_ha=wanted, boron_kg_ha=wanted, by=by, limits=limits)
 

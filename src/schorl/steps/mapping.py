@@ -10,6 +10,7 @@ from types import MappingProxyType
 import numpy as np
 import shapely
 
+from schorl.agronomy.laboratory import lab_relative_sd
 from schorl.errors import OwnFault, Refusal
 from schorl.findings import Finding, finding
 from schorl.geostat import Support, VariogramFit, fit_reml, krige, leave_one_out
@@ -28,8 +29,6 @@ LEAST_SAMPLES, LEAST_FOR_PATTERN = 4, 10
 #: Leave-one-out skill under which a pattern counts as weak: never below the first, and the second
 #: over the root of the number of samples (proposals, see `weak_below`).
 LEAST_SKILL, SKILL_BY_CHANCE = 0.10, 1.2
-#: Laboratory repeatability of organic matter and clay, relative (a proposal); boron's is asked.
-OTHER_LAB_SD = 0.05
 ZONE_POINTS = 40
 NORMAL_90 = 1.6448536269514722
 
@@ -106,14 +105,13 @@ class _Data:
 def _data_of(name: str, samples: SampleSet) -> _Data:
     measured = samples.properties[name]
     known = measured.known
-    relative = samples.campaign.lab_relative_sd if name == "boron" else OTHER_LAB_SD
     return _Data(
         name=name,
         places=samples.east_north_m[known],
         values=measured.values[known],
         below=measured.below_limit[known],
         support=supports_of(samples, known),
-        lab_sd=relative,
+        lab_sd=lab_relative_sd(samples.campaign, name),
     )
 
 

@@ -16,7 +16,7 @@ from schorl.agronomy.tables import limit
 from schorl.findings import Finding, finding
 from schorl.machinery.plan import MachineOutcome, machine_plan
 from schorl.machinery.sprayer import settled_machine
-from schorl.model.arrays import Flags, Floats
+from schorl.model.arrays import Counts, Flags, Floats
 from schorl.model.field import CellGrid
 from schorl.model.prescription import CellNeed, Limit, Outlook, PlanValue, Prescription, ZoneRate
 from schorl.model.samples import SampleSet
@@ -34,15 +34,13 @@ from schorl.steps.zone_rates import (
     ruled_rate,
     unevenness_of,
 )
+from schorl.zoning.loss import saving_range
 
 __all__ = [
     "Assessed", "Rated", "ZoneRows", "assess_cells", "plan_outcome", "prescribe_rates",
     "rated_zones",
 ]  # fmt: skip
 
-#: Error of a predicted saving in trials on simulated fields, as a share of the flat loss, by
-#: number of samples; twice this is the range that is shown.
-SAVING_ERROR = ((30, 0.09), (60, 0.06), (120, 0.05))
 FEW_SAMPLES = 3
 #: A flat rate that loses less over the whole field leaves nothing to save, kg B.
 LEAST_LOSS_KG = 1e-6
@@ -125,7 +123,7 @@ def rated_zones(
         value=value,
         machine=machine.plan,
         saving=_saving(value, len(rows.samples)),
-        advice=advice_for(rows.samples, rows.surfaces, rates, settings),
+        advice=advice_for(rows.samples, rows.zone_of_sample(), rates, settings),
         sources=used,
     )
     found = (*machine.findings, *_findings(prescription, need, settings))
@@ -216,6 +214,12 @@ class ZoneRows:
             samples=self._samples_in(chosen),
             why=why(boron, spread, target, self._mean_of("clay", chosen), ruled),
         )
+
+    def zone_of_sample(self) -> Counts:
+        """Number of the zone that each sample lies in, ``(n,)``; 0 for none."""
+        numbers = np.array([zone.number for zone in self.zone_map.zones], dtype=np.intp)
+        cells = self.grid.cell_of(self.samples.east_north_m)
+        return np.where(cells >= 0, numbers[self.zone_map.labels[cells]], 0)
 
     def _mean_of(self, name: str, chosen: Flags) -> float:
         surface = self.surfaces.get(name)
@@ -331,10 +335,9 @@ def _saving(value: tuple[PlanValue, ...], samples: int) -> tuple[float, float, f
     zones, flat = value[0].loss_kg, value[1].loss_kg
     if flat <= LEAST_LOSS_KG:
         return None
-    sizes, errors = zip(*SAVING_ERROR, strict=True)
-    error = float(np.interp(samples, sizes, errors))
     saved = 1.0 - zones / flat
-    return saved - 2.0 * error, saved, saved + 2.0 * error
+    low, high = saving_range(saved, samples)
+    return low, saved, high
 
 
 def _findings(prescription: Prescription, need: CellNeed, settings: RunSettings) -> list[Finding]:

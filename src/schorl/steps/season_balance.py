@@ -6,10 +6,9 @@ import math
 
 import shapely
 
+from schorl.agronomy.tables import limit
 from schorl.model.change import SeasonPack, SeasonZone, ZoneBalance, ZoneChange
 
-#: Under this much boron given (kg/ha) a recovery would be a quotient of noise.
-LEAST_APPLIED_KG_HA = 0.1
 NAN = float("nan")
 
 
@@ -51,7 +50,7 @@ def _balance(
     if change is not None:
         found = [one * mass for one in (change.change, change.low, change.high)]
     taken = 0.0 if math.isnan(removed) else removed
-    enough = applied >= LEAST_APPLIED_KG_HA
+    enough = applied >= limit("recovery-least")
     recovery = [(one + taken) / applied if enough else NAN for one in found]
     return ZoneBalance(
         zone=zone.number, applied=applied, removed=removed,

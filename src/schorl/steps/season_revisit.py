@@ -4,13 +4,12 @@ from __future__ import annotations
 
 import numpy as np
 
+from schorl.agronomy.tables import limit
 from schorl.model.arrays import Counts, Floats
 from schorl.model.change import RevisitSite, SeasonPack
 from schorl.steps.season_sites import ZONE, measured, zone_places
 from schorl.steps.season_tests import ALPHA, POWER
 
-#: Change of a zone's mean that the revisited sites should show, mg/kg (a proposal).
-WORTH_SEEING_MG_KG = 0.10
 LEAST_A_ZONE, MOST_A_ZONE = 3, 12
 
 
@@ -47,12 +46,12 @@ def revisit_sites(pack: SeasonPack, *, sd_of_change: float) -> tuple[RevisitSite
 
 
 def sites_wanted(sd_of_change: float) -> int:
-    """Sites a zone that show ``WORTH_SEEING_MG_KG`` four times in five."""
+    """Sites a zone that show a change worth seeing (table of limits) four times in five."""
     from scipy.stats import norm
 
     if not np.isfinite(sd_of_change):
         return LEAST_A_ZONE * 2
-    reach = float(norm.ppf(1 - ALPHA / 2) + norm.ppf(POWER)) * sd_of_change / WORTH_SEEING_MG_KG
+    reach = float(norm.ppf(1 - ALPHA / 2) + norm.ppf(POWER)) * sd_of_change / limit("change-seen")
     return int(np.clip(np.ceil(reach**2), LEAST_A_ZONE, MOST_A_ZONE))
 
 

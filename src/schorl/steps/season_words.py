@@ -5,11 +5,10 @@ from __future__ import annotations
 import numpy as np
 
 from schorl.model.change import SeasonChange, ZoneChange
+from schorl.steps.season_zones import LEAST_MOVED_HA
 
 #: Why two packs of one campaign are not subtracted.
 SAME_SAMPLES = "both packs rest on the same samples"
-#: Less ground than this in another zone is drawing, not moving.
-LEAST_MOVED_HA = 0.01
 
 
 def in_words(change: SeasonChange) -> str:

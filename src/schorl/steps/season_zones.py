@@ -34,6 +34,7 @@ from schorl.zoning.matching import (
 DRAWS, MOST_CELLS = 24, 4000
 #: Fewer sites than this do not make a map that could be drawn again.
 LEAST_SITES = 10
+#: Less ground than this in another zone is drawing, not moving.
 LEAST_MOVED_HA = 0.01
 
 

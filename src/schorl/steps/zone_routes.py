@@ -8,6 +8,7 @@ from typing import cast
 import numpy as np
 import shapely
 
+from schorl.agronomy.laboratory import lab_relative_sd
 from schorl.errors import Refusal
 from schorl.findings import Finding, finding
 from schorl.model.arrays import Counts, Floats
@@ -167,7 +168,7 @@ def composite_need_error(land: Land, labels: Counts) -> Floats:
     error = composite_error_mg_kg(
         samples.properties["boron"].values,
         samples.cores,
-        lab_relative_sd=samples.campaign.lab_relative_sd,
+        lab_relative_sd=lab_relative_sd(samples.campaign),
     )
     mass = np.full(len(samples), float(land.need.mass_need.mean()))
     for place in range(len(samples)):

@@ -28,7 +28,7 @@ def test_ranges_are_those_of_the_table_and_name_crops_that_exist():
     for row in table("tissue"):
         assert set(row["crops"].split("|")) <= crops
     assert (ALFALFA.deficient_below, ALFALFA.sufficient_from) == (20, 30)
-    assert len(leaf_ranges("alfalfa (lucerne)")) == 2
+    assert len(leaf_ranges("alfalfa (lucerne)")) == 3
 
 
 def test_which_range_is_asked_and_a_missing_one_is_refused():
@@ -36,7 +36,7 @@ def test_which_range_is_asked_and_a_missing_one_is_refused():
         leaf_range("alfalfa (lucerne)", row=None)
     assert "`alfalfa top third`" in asked.value.findings[0].hint
     with pytest.raises(Refusal) as refused:
-        leaf_range("sugar beet", row=None)
+        leaf_range("lentil", row=None)
     assert "--by" in refused.value.findings[0].hint
     with pytest.raises(Refusal):
         leaf_range("maize", row="maize leaf")  # tells only excess
@@ -76,7 +76,7 @@ def test_young_leaves_say_nothing_where_boron_moves_in_the_plant():
 
 
 def test_too_much_is_called_out_before_all_else():
-    held = leaf_range("tomato", row=None)
+    held = leaf_range("tomato", row="tomato leaf")
     assert judged(190, crop="tomato", held=held).verdict is LeafVerdict.TOXIC
     assert judged(170, crop="tomato", held=held).verdict is LeafVerdict.TOXIC  # within its error
 
