@@ -23,10 +23,12 @@ from schorl.steps.zoning import draw_zones
 from schorl.zoning.drawing import ClusterMap, cluster_maps
 from schorl.zoning.features import build_features
 from schorl.zoning.indices import index_table
-from schorl.zoning.zone_count import choose_count, enough_zones, gate_open
+from schorl.zoning.structure import structure_p
+from schorl.zoning.zone_count import GATE_SAVING, choose_count, enough_zones
 
 COUNTS = (2, 3, 4, 5)
 WORTH = 0.05  # a true saving from which zones are the right answer
+NEED_P = 0.10  # the test of the need alone, as trials began with it
 WORSE = -0.01  # a true saving below which a field was made worse
 OUR_RULE = "this program"
 TARGETS = {30: 0.79, 60: 0.82, 120: 0.88}
@@ -85,7 +87,9 @@ def judge_field(kind: str, separation: float, count: int, *, seed: list[int]) ->
         return 1.0 - true_loss(labels, need, one.true_need) / flat
 
     true_saving = {1: 0.0} | {k: saved(found.labels) for k, found in maps.items()}
-    chosen = _choices(zoned, table, maps)
+    places = one.samples.east_north_m
+    need_p = structure_p(places, sample_need(one.samples), seed=0)
+    chosen = _choices(zoned, table, maps, need_p=need_p)
     real = {rule: true_saving.get(k, 0.0) for rule, k in chosen.items()}
     real[OUR_RULE] = saved(zoned.labels) if zoned.count > 1 else 0.0
     predicted = {row.count: row.saving for row in zoned.table}
@@ -101,12 +105,14 @@ def judge_field(kind: str, separation: float, count: int, *, seed: list[int]) ->
     )
 
 
-def _choices(zoned: ZoneMap, table: np.ndarray, maps: dict[int, ClusterMap]) -> dict[str, int]:
+def _choices(
+    zoned: ZoneMap, table: np.ndarray, maps: dict[int, ClusterMap], *, need_p: float
+) -> dict[str, int]:
     savings = {row.count: row.saving for row in zoned.table}
     chosen = {
         OUR_RULE: zoned.count,
-        "without left-out samples": choose_count(savings, zoned.classes_found)
-        if gate_open(savings, zoned.structure_p)
+        "need alone patterned": choose_count(savings, zoned.classes_found)
+        if need_p <= NEED_P and max(savings.values()) >= GATE_SAVING
         else 1,
         "without the gate": enough_zones(savings),
         "always flat": 1,

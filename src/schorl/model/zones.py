@@ -65,7 +65,7 @@ class ZoneMap:
     heading_deg: float
     doubt: Floats = field(default_factory=lambda: np.empty(0))
     sureness: tuple[float, ...] = ()
-    structure_p: float | None = None  # Moran-type permutation test of the need
+    structure_p: float | None = None  # permutation test of need and soil, or of sample zones
     table: tuple[CountFigure, ...] = ()
     classes_found: int | None = None  # mixture on the samples; None where it was not asked
     too_narrow_ha: float = 0.0  # area a machine cannot follow

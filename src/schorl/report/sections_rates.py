@@ -212,7 +212,9 @@ def _index_words(record: RunRecord) -> Safe:
     zone_map = record.prescription.zone_map
     said = [f"Origin of the zones: {zone_map.origin}."]
     if zone_map.structure_p is not None:
-        said.append(f"Chance that the pattern of need is accident: p = {zone_map.structure_p:.3g}.")
+        said.append(
+            f"Chance that the pattern of need and soil is accident: p = {zone_map.structure_p:.3g}."
+        )
     if zone_map.classes_found is not None:
         said.append(f"Groups found among the samples alone: {zone_map.classes_found}.")
     if zone_map.too_narrow_ha > 0.005:

@@ -8,9 +8,8 @@ import numpy as np
 
 from schorl.findings import Finding, finding
 from schorl.model.arrays import Flags, Floats
-from schorl.model.surface import Verdict
 from schorl.model.zones import CountFigure
-from schorl.steps.zone_land import Drawn, Land, count_figures, need_structure_p
+from schorl.steps.zone_land import Drawn, Land, count_figures, need_structure_p, varying_soil
 from schorl.zoning import reasons
 from schorl.zoning.cover import SMALL_M2
 from schorl.zoning.drawing import (
@@ -21,11 +20,10 @@ from schorl.zoning.drawing import (
     shares_of,
     tolerance_of,
 )
-from schorl.zoning.features import SOIL, Features, build_features
+from schorl.zoning.features import Features, build_features
 from schorl.zoning.indices import index_table
 from schorl.zoning.loss import saving_range
 from schorl.zoning.plans import compact, savings_of
-from schorl.zoning.predicted import LeftOut, least_skill, left_out_means, need_skill
 from schorl.zoning.structure import GATE_P
 from schorl.zoning.zone_count import (
     GATE_SAVING,
@@ -48,7 +46,6 @@ class _Case:
     maps: dict[int, ClusterMap]
     savings: dict[int, float]
     p: float
-    skill: float | None
     classes: int | None
     table: tuple[CountFigure, ...]
     findings: tuple[Finding, ...]
@@ -58,7 +55,7 @@ def clustered_zones(land: Land) -> Drawn:
     """Zones from clusters if the gate opens or a number was asked for, else one flat rate."""
     case = _case(land)
     asked = land.zoning.count
-    open_ = gate_open(case.savings, case.p, predicts=_predicts(land, case))
+    open_ = gate_open(case.savings, case.p)
     wanted = asked or (choose_count(case.savings, case.classes) if open_ else 1)
     if wanted not in case.maps:
         return _flat(land, case, best=max(case.savings.values()))
@@ -96,7 +93,6 @@ def _case(land: Land) -> _Case:
         maps=maps,
         savings=savings,
         p=need_structure_p(land),
-        skill=sample_skill(land),
         classes=sample_classes(land),
         table=count_figures(land, savings, indices),
         findings=tuple(
@@ -109,37 +105,12 @@ def _case(land: Land) -> _Case:
 
 def sample_classes(land: Land) -> int | None:
     """Discrete classes among the samples in use; None where they cannot say."""
-    samples, free = land.samples, land.samples_in_use()
+    free = land.samples_in_use()
     columns: list[Floats] = []
-    for name in SOIL:
-        surface, measured = land.surfaces.get(name), samples.properties.get(name)
-        if surface is None or surface.constant or measured is None:
-            continue
+    for _, measured in varying_soil(land):
         if _mostly_told(measured.below_limit[free]):
             columns.append(measured.values[free])
     return discrete_classes(sample_table(columns, seed=land.seed), seed=land.seed)
-
-
-def sample_skill(land: Land) -> float | None:
-    """Leave-one-out skill of the need at the samples in use; None where nothing can tell it."""
-    samples, free = land.samples, land.samples_in_use()
-    told = []
-    for name in SOIL:
-        surface, measured = land.surfaces.get(name), samples.properties.get(name)
-        if surface is None or surface.constant or measured is None or surface.quality is None:
-            continue
-        known = measured.known
-        predicted = np.full(len(samples), np.nan)
-        flat = surface.verdict is Verdict.NONE
-        predicted[known] = (
-            left_out_means(measured.values[known]) if flat else surface.quality.predicted
-        )
-        told.append(LeftOut(observed=measured.values[free], predicted=predicted[free]))
-    return need_skill(land.sample_need_kg_ha[free], told)
-
-
-def _predicts(land: Land, case: _Case) -> bool:
-    return case.skill is None or case.skill >= least_skill(int(land.samples_in_use().sum()))
 
 
 def _mostly_told(below: Flags) -> bool:
@@ -156,10 +127,10 @@ def _flat(land: Land, case: _Case, *, best: float) -> Drawn:
         origin="one flat rate",
         reason=reasons.flat_reason(
             p=case.p,
+            differs=case.p <= GATE_P,
             best=best,
             samples=int(land.samples_in_use().sum()),
             test="pattern",
-            skill=None if _predicts(land, case) else case.skill,
         ),
         structure_p=case.p,
         classes=case.classes,
@@ -201,7 +172,7 @@ def _count_findings(land: Land, case: _Case, *, saving: float, left: int) -> tup
         found.append(finding("ZONE-FEWER", where=where, what=said))
     if asked and (case.p > GATE_P or saving < GATE_SAVING):
         said = (
-            f"{asked} zones were asked for: pattern of the need p = {case.p:.2f}, expected saving "
+            f"{asked} zones were asked for: pattern of need and soil p = {case.p:.3f}, expected saving "
             f"{reasons.percent(saving)}"
         )
         found.append(finding("ZONE-COUNT", where=where, what=said))

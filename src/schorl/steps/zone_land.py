@@ -12,11 +12,12 @@ from schorl.findings import Finding
 from schorl.model.arrays import Flags, Floats
 from schorl.model.field import CellGrid, Field
 from schorl.model.prescription import CellNeed
-from schorl.model.samples import SampleSet
+from schorl.model.samples import Measured, SampleSet
 from schorl.model.settings import RunSettings, ZoneSettings
 from schorl.model.surface import Surface
 from schorl.model.zones import CountFigure
 from schorl.zoning.cover import Fixed, LabelOf
+from schorl.zoning.features import SOIL
 from schorl.zoning.loss import saving_range
 from schorl.zoning.plans import Judge
 from schorl.zoning.structure import structure_p
@@ -82,11 +83,22 @@ class Drawn:
 
 
 def need_structure_p(land: Land) -> float:
-    """Chance that needs without pattern look as patterned as those of the samples in use."""
-    free = land.samples_in_use()
+    """Chance that samples without pattern look as patterned as those in use."""
+    samples, free = land.samples, land.samples_in_use()
+    properties = [measured.values[free] for _, measured in varying_soil(land)]
     return structure_p(
-        land.samples.east_north_m[free], land.sample_need_kg_ha[free], seed=land.seed
+        samples.east_north_m[free], land.sample_need_kg_ha[free], properties, seed=land.seed
     )
+
+
+def varying_soil(land: Land) -> list[tuple[str, Measured]]:
+    """Name and samples of every soil property that is mapped and not one value for the field."""
+    return [
+        (name, land.samples.properties[name])
+        for name in SOIL
+        if name in land.surfaces and name in land.samples.properties
+        if not land.surfaces[name].constant
+    ]
 
 
 def count_figures(

@@ -19,12 +19,12 @@ from schorl.zoning import reasons
 from schorl.zoning.cover import SLIVER_M2
 from schorl.zoning.sampled import (
     COVERED,
+    DIFFER_P,
     composite_error_mg_kg,
     covered_share,
     differences_p,
     label_in,
 )
-from schorl.zoning.structure import GATE_P
 from schorl.zoning.zone_count import GATE_SAVING
 
 LEAST_COVERED = 0.50
@@ -144,9 +144,11 @@ def sampled_zones(land: Land) -> Drawn:
     saving = land.judge.saving(labels)
     count = len(np.unique(labels[labels >= 0]))
     table = count_figures(land, {1: 0.0, count: saving})
-    if p > GATE_P or saving < GATE_SAVING:
+    differs = p <= DIFFER_P
+    if not differs or saving < GATE_SAVING:
         reason = reasons.flat_reason(
             p=p,
+            differs=differs,
             best=saving,
             samples=len(areas),
             test="difference between the sample zones",

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from schorl.zoning.structure import GATE_P
 from schorl.zoning.zone_count import GATE_SAVING
 
 #: Below this number of samples a missing pattern is no evidence of a uniform field.
@@ -27,17 +26,12 @@ def between(low: float, high: float) -> str:
     return f"between {percent(low)} and {percent(high)}"
 
 
-def flat_reason(
-    *, p: float, best: float, samples: int, test: str, skill: float | None = None
-) -> str:
-    """Why one flat rate: no pattern in the need, no map that predicts it, or nothing gained.
-
-    ``skill`` is given where it was too low.
-    """
-    if p > GATE_P:
+def flat_reason(*, p: float, differs: bool, best: float, samples: int, test: str) -> str:
+    """Why one flat rate: no pattern in need and soil, or nothing gained."""
+    if not differs:
         sentence = (
-            f"One flat rate: the boron need at the {samples} samples shows no {test} that chance "
-            f"would not show as well (p = {p:.2f})."
+            f"One flat rate: boron need and soil at the {samples} samples show no {test} that "
+            f"chance would not show as well (p = {p:.3f})."
         )
         if samples < FEW_SAMPLES:
             sentence += (
@@ -45,12 +39,6 @@ def flat_reason(
                 "that zones cannot be told from them."
             )
         return sentence
-    if skill is not None:
-        return (
-            "One flat rate: the maps do not predict the boron need where a sample is left out "
-            f"(they explain {percent(max(skill, 0.0))} of its differences), so zones drawn from "
-            "them cannot be trusted."
-        )
     return (
         f"One flat rate: after all limits and machine steps the best zones would save "
         f"{percent(max(best, 0.0))} of the expected loss; below {percent(GATE_SAVING)} zones are "
@@ -69,7 +57,7 @@ def cluster_reason(
 ) -> str:
     """Why so many zones: classes in the samples, or slices of a gradient that save enough."""
     return (
-        f"{number_word(count).capitalize()} zones: the boron need is patterned (p = {p:.3f}), "
+        f"{number_word(count).capitalize()} zones: need and soil are patterned (p = {p:.3f}), "
         f"zones save {percent(saving)} of the loss of one flat rate ({between(low, high)}), "
         f"and {_kind(count, classes)}."
     )
@@ -91,7 +79,7 @@ def own_count_reason(count: int, *, p: float | None, saving: float, low: float, 
     """The advisor's own number, with what speaks for it."""
     if count == 1:
         return "One flat rate, as asked for."
-    shown = "" if p is None else f"; pattern of the need: p = {p:.3f}"
+    shown = "" if p is None else f"; pattern of need and soil: p = {p:.3f}"
     return (
         f"{number_word(count).capitalize()} zones, as asked for: expected saving against one flat "
         f"rate {percent(saving)} ({between(low, high)}){shown}."

@@ -15,6 +15,8 @@ from schorl.zoning.cover import UNKNOWN
 COVERED = 0.90
 #: Spread of single cores inside a sample zone, as a share of the value (a proposal, no source).
 CORE_CV = 0.30
+#: At or below this chance the needs of sample zones count as different.
+DIFFER_P = 0.10
 
 
 def covered_share(areas: Sequence[Area], boundary: Area) -> float:

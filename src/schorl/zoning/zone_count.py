@@ -102,13 +102,13 @@ def enough_zones(savings: Mapping[int, float]) -> int:
     return min(count for count, saving in savings.items() if saving >= ENOUGH * best)
 
 
-def gate_open(savings: Mapping[int, float], p: float, *, predicts: bool = True) -> bool:
+def gate_open(savings: Mapping[int, float], p: float) -> bool:
     """Whether zones are worth drawing.
 
-    The need is structured (p at most 0.10), the maps predict it at left-out samples, and the best
-    map saves at least 8 % of the flat rate's expected loss.
+    Need and soil are structured (p at most 0.01), and the best map saves at least 8 % of the flat
+    rate's expected loss.
     """
-    return p <= GATE_P and predicts and max(savings.values(), default=0.0) >= GATE_SAVING
+    return p <= GATE_P and max(savings.values(), default=0.0) >= GATE_SAVING
 
 
 def choose_count(savings: Mapping[int, float], classes: int | None) -> int:

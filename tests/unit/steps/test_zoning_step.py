@@ -10,7 +10,7 @@ import shapely
 
 from schorl.errors import Refusal
 from schorl.model.settings import ExtraLayer
-from schorl.model.surface import LeaveOneOut, Verdict
+from schorl.model.surface import Verdict
 from schorl.model.zones import ZoneKind
 from schorl.zoning.cover import cover_faults
 from support.zone_fields import MASS, samples_at, shifted, trial
@@ -52,7 +52,7 @@ def test_a_step_in_boron_becomes_two_zones_numbered_from_the_least_boron():
 
 def test_the_reason_and_the_table_stand_behind_the_number():
     zones = trial().draw().zone_map
-    assert zones.reason.startswith("Two zones: the boron need is patterned (p = 0.002)")
+    assert zones.reason.startswith("Two zones: need and soil are patterned (p = 0.001)")
     assert [row.count for row in zones.table] == [1, 2, 3, 4, 5]
     assert zones.table[0].saving == 0.0
     assert all(row.saving_low <= row.saving <= row.saving_high for row in zones.table)
@@ -87,23 +87,6 @@ def test_a_pattern_that_saves_nothing_under_the_cap_gets_one_rate():
     assert zoned.zone_map.structure_p < 0.01
     assert zoned.zone_map.count == 1
     assert "not worth their risk" in zoned.zone_map.reason
-
-
-def test_maps_that_do_not_predict_left_out_samples_get_one_rate():
-    one = trial()
-    surfaces = {}
-    for name in ("boron", "clay"):
-        observed = one.samples.properties[name].values
-        wrong = observed[::-1]
-        surfaces[name] = replace(
-            one.surfaces[name],
-            quality=LeaveOneOut(
-                observed=observed, predicted=wrong, z=wrong, rmse=1, skill=-1, msdr=1, coverage_90=1
-            ),
-        )
-    zoned = replace(one, surfaces=surfaces).draw()
-    assert zoned.zone_map.count == 1
-    assert "left out" in zoned.zone_map.reason
 
 
 def test_flat_boron_numbers_zones_from_the_most_need():

@@ -5,7 +5,6 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from schorl.zoning.predicted import LeftOut, least_skill, left_out_means, need_skill
 from schorl.zoning.zone_count import (
     choose_count,
     discrete_classes,
@@ -18,19 +17,18 @@ GOOD = {1: 0.0, 2: 0.20, 3: 0.27, 4: 0.30, 5: 0.31}
 
 
 @pytest.mark.parametrize(
-    ("savings", "p", "predicts", "is_open"),
+    ("savings", "p", "is_open"),
     [
-        (GOOD, 0.002, True, True),
-        (GOOD, 0.10, True, True),
-        (GOOD, 0.102, True, False),  # no pattern in the need
-        (GOOD, 0.002, False, False),  # maps that do not predict
-        ({1: 0.0, 2: 0.05, 3: 0.079}, 0.002, True, False),  # nothing gained
-        ({1: 0.0, 2: 0.05, 3: 0.08}, 0.002, True, True),
-        ({1: 0.0}, 0.002, True, False),  # no map at all
+        (GOOD, 0.002, True),
+        (GOOD, 0.01, True),
+        (GOOD, 0.011, False),  # no pattern in need and soil
+        ({1: 0.0, 2: 0.05, 3: 0.079}, 0.002, False),  # nothing gained
+        ({1: 0.0, 2: 0.05, 3: 0.08}, 0.002, True),
+        ({1: 0.0}, 0.002, False),  # no map at all
     ],
 )
-def test_the_gate_needs_pattern_prediction_and_saving(savings, p, predicts, is_open):
-    assert gate_open(savings, p, predicts=predicts) is is_open
+def test_the_gate_needs_pattern_and_saving(savings, p, is_open):
+    assert gate_open(savings, p) is is_open
 
 
 def test_without_classes_the_least_number_with_85_percent_of_the_best_saving():
@@ -92,23 +90,3 @@ def test_skewed_columns_and_outliers_do_not_become_classes():
 def test_incomplete_samples_and_constant_columns_are_dropped():
     columns = [np.array([1.0, 2.0, np.nan, 4.0]), np.array([3.0, 3.0, 3.0, 3.0])]
     assert sample_table(columns, seed=0).shape == (3, 1)
-
-
-def test_skill_is_one_for_perfect_and_nothing_for_left_out_means():
-    random = np.random.default_rng(1)
-    boron, clay = random.normal(0.6, 0.1, 50), random.normal(22, 3, 50)
-    need = 2.6 * (0.8 + 0.01 * (clay - 22) - boron)
-    perfect = [LeftOut(observed=boron, predicted=boron), LeftOut(observed=clay, predicted=clay)]
-    assert need_skill(need, perfect) == pytest.approx(1.0)
-    mean = [
-        LeftOut(observed=boron, predicted=left_out_means(boron)),
-        LeftOut(observed=clay, predicted=left_out_means(clay)),
-    ]
-    assert need_skill(need, mean) == pytest.approx(0.0, abs=1e-12)
-    assert need_skill(need, []) is None
-
-
-def test_fewer_samples_must_show_more_skill():
-    assert least_skill(60) == pytest.approx(0.10)
-    assert least_skill(30) == pytest.approx(0.1414, abs=1e-4)
-    assert least_skill(240) == pytest.approx(0.05)
