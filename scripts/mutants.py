@@ -33,11 +33,15 @@ MODULES = {
     "rates": "schorl.machinery.rates",
     "zone_rates": "schorl.steps.zone_rates",
     "limits_of_soil": "schorl.steps.limits_of_soil",
+    "assessing": "schorl.steps.assessing",
+    "rating": "schorl.steps.rating",
+    "advice": "schorl.steps.advice",
 }
 #: The quickest first: a run stops at the first failure.
 TESTS = (
     "tests/unit/steps/test_dose_path.py", "tests/unit/steps/test_limits_of_soil.py",
-    "tests/unit/steps/test_assessing.py", "tests/published/test_published_rates.py",
+    "tests/unit/steps/test_assessing.py", "tests/unit/steps/test_rating.py",
+    "tests/unit/steps/test_advice.py", "tests/published/test_published_rates.py",
     "tests/published/test_agronomy_published.py", "tests/unit/steps/test_class_limits.py",
     "tests/unit/agronomy", "tests/laws/test_rate_laws.py",
 )  # fmt: skip
