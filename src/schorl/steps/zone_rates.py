@@ -20,7 +20,8 @@ from schorl.model.arrays import Counts, Flags, Floats
 from schorl.model.prescription import CellNeed, Limit, PlanOutcome
 from schorl.model.settings import Placement, RunSettings
 
-BISECTIONS = 34  # 4.5 kg/ha halved 34 times is far below any machine's step
+BISECTIONS = 34  # 6.7 kg/ha halved 34 times is far below any machine's step
+EXACT_KG_HA = 1e-9
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -102,15 +103,14 @@ def ruled_rate(cells: CellNeed, settings: RunSettings) -> Ruled:
     if 0.0 < wanted < least_worth(settings):
         wanted, by = 0.0, Limit.LEAST_WORTH
     given = float(machine_rate(wanted, settings.product, settings.machine))
-    if given < wanted - _slack(settings, wanted):
+    if given < wanted - _slack(settings) or (wanted > 0.0 and given == 0.0):
         by = Limit.MACHINE
     return Ruled(need_kg_ha=need, wanted_kg_ha=wanted, boron_kg_ha=given, by=by, limits=limits)
 
 
-def _slack(settings: RunSettings, wanted: float) -> float:
+def _slack(settings: RunSettings) -> float:
     """Rounding down by less than one step is not what ruled a rate."""
-    step = step_boron_kg_ha(settings.product, settings.machine)
-    return step if step and wanted else 1e-9
+    return step_boron_kg_ha(settings.product, settings.machine) or EXACT_KG_HA
 
 
 def least_worth(settings: RunSettings) -> float:

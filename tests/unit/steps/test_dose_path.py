@@ -40,6 +40,7 @@ from schorl.machinery.rates import (
     step_boron_kg_ha,
     volume_known,
 )
+from schorl.machinery.sprayer import settled_machine
 from schorl.model.prescription import CellNeed, Limit
 from schorl.model.settings import (
     CropSettings,
@@ -327,6 +328,40 @@ def test_the_machines_step_is_not_what_ruled_but_its_least_is():
     held = ruled_rate(need(), least)
     assert (held.boron_kg_ha, held.by) == (0.0, Limit.MACHINE)
     assert held.wanted_kg_ha == pytest.approx(one.wanted_kg_ha)
+    coarse = job(machine=Machine(spread_cv_pct=15.0, step=40.0))  # 4 kg B/ha a step
+    none = ruled_rate(need(), coarse)
+    assert 0 < none.wanted_kg_ha < 4.0
+    assert (none.boron_kg_ha, none.by) == (0.0, Limit.MACHINE)
+
+
+def test_the_least_rate_worth_giving_is_given():
+    at = need(rate_cap_kg_ha=np.full(2, 0.30))
+    assert (ruled_rate(at, job()).boron_kg_ha, ruled_rate(at, job()).by) == (
+        pytest.approx(0.30), Limit.RATE_CAP,
+    )  # fmt: skip
+    assert cell_rates_kg_ha(at, job()).tolist() == pytest.approx([0.30, 0.30])
+
+
+def test_a_sprays_mix_suits_every_zone_of_a_plan_by_its_area():
+    """The mix for both zones differs from the one for the second alone."""
+    cells = need(need_mean_kg_ha=np.array([0.7, 0.4]))
+    spray = replace(
+        job(placement=Placement.INCORPORATED, machine=Machine(tank_l=3000.0, water_l_ha=100.0)),
+        product=Product(form=Form.SPRAY, boron_g_l=150.0),
+    )
+    wanted = [
+        ruled_rate(part_of(cells, np.arange(2) == place), spray).boron_kg_ha for place in (0, 1)
+    ]
+    machine = settled_machine(
+        [(1.0, wanted[0]), (1.0, wanted[1])], spray.product, spray.machine, spray.placement
+    )
+    without = settled_machine(
+        [(0.0, wanted[0]), (1.0, wanted[1])], spray.product, spray.machine, spray.placement
+    )
+    expected = machine_rate(np.array(wanted), spray.product, machine)
+    assert machine_rate(np.array(wanted), spray.product, without) != pytest.approx(expected)
+    got = plan_outcome(np.array([0, 1]), cells, spray, cell_ha=0.01).rates_kg_ha
+    assert got.tolist() == pytest.approx(expected.tolist())
 
 
 def test_a_plan_and_rates_by_cell():
