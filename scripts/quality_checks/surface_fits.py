@@ -16,7 +16,7 @@ from scipy.stats import norm
 
 from schorl.geostat import Support, Variogram, krige, leave_one_out
 from schorl.geostat.reml import fit_best_transform
-from schorl.steps.mapping import weak_below
+from schorl.steps.mapping import prediction_factor, weak_below
 
 Z90 = float(norm.ppf(0.95))
 
@@ -28,6 +28,7 @@ class Model:
     variogram: Variogram
     log: bool
     verdict: str = ""
+    factor: float = 1.0  # of the variance at new places
 
     def scale(self, values):
         return np.log(values) if self.log else values
@@ -43,7 +44,7 @@ class Model:
         location, variance = krige(
             places, self.scale(values), targets, self.variogram, support=supports
         )
-        return location, np.sqrt(variance + self.variogram.nugget)
+        return location, np.sqrt(self.factor * (variance + self.variogram.nugget))
 
 
 def schorl(places, values, supports: Sequence[Support] | None = None) -> Model:
@@ -56,7 +57,10 @@ def schorl(places, values, supports: Sequence[Support] | None = None) -> Model:
         verdict = "no pattern"
     else:
         verdict = "weak pattern" if skill < weak_below(len(values)) else "pattern found"
-    return Model(variogram=fit.variogram, log=model.log, verdict=verdict)
+    return Model(
+        variogram=fit.variogram, log=model.log, verdict=verdict,
+        factor=prediction_factor(len(values)),
+    )  # fmt: skip
 
 
 def pykrige(places, values, supports=None) -> Model:
