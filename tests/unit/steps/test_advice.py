@@ -11,7 +11,7 @@ import shapely
 from schorl.agronomy.tables import limit
 from schorl.model.samples import Measured
 from schorl.model.zones import Zone, ZoneKind, ZoneMap
-from schorl.steps.advice import leached_share
+from schorl.steps.advice import advice_for, leached_share
 from schorl.steps.assessing import assess_cells
 from schorl.steps.rating import prescribe_rates
 from support.one_soil import CELLS, GRID, job, sampled, surfaces_of
@@ -95,3 +95,14 @@ def test_leached_share_follows_the_published_line(drainage, clay, share):
     """Loss (mg/kg of 0.5 applied) = 0.001 drainage - 0.01 clay + 0.14: Dhassi et al. 2019."""
     assert leached_share(drainage, clay) == pytest.approx(share)
     assert limit("leach-applied") == 0.5
+
+
+def test_thresholds_and_samples_outside_all_zones():
+    assert "boron is held strongly" not in said(ph=(7.5, 7.5))
+    one_mm = leached_share(1.0, 10.0)  # (0.001 - 0.1 + 0.14) / 0.5
+    assert one_mm == pytest.approx(0.082)
+    samples = sampled(0.4, constants=SOIL)
+    ph = Measured(values=np.array([9.0, 9.0, 6.0, 6.0]), below_limit=np.zeros(CELLS, bool))
+    samples = replace(samples, properties={**samples.properties, "ph": ph})
+    told = advice_for(samples, np.array([0, 0, 1, 1]), (), job("sugar beet"))
+    assert told == ()
