@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 import shapely
 
+from schorl.model.settings import AppliedBoron
 from schorl.report.layers import boron_range, layers_of, short_before
 from schorl.report.page import report_page
 from support.browser import axe_faults, needs_chromium
@@ -210,6 +211,17 @@ def test_a_mouse_that_moves_is_not_read_aloud(opened, page_file, record):
     page.mouse.move(*on_screen(page, record, 400))
     assert "Boron" in reading(page)
     assert page.locator("#spoken").inner_text() == ""
+
+
+def test_a_checksum_without_a_break_does_not_widen_a_phones_page(opened, record, tmp_path):
+    long = f"Example-2026, manifest {'a1' * 32}"
+    given = AppliedBoron(on=None, kg_ha=0.3, this_season=True, source=long)
+    crop = replace(record.settings.crop, applied=(given,))
+    made = replace(record, adapted_from=long, settings=replace(record.settings, crop=crop))
+    path = tmp_path / "report.html"
+    path.write_bytes(report_page(made))
+    page = opened(path, viewport={"width": 390, "height": 844})
+    assert page.evaluate("document.documentElement.scrollWidth") <= 390
 
 
 def test_phone_width_with_a_finger(opened, page_file, record):

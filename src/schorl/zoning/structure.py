@@ -16,7 +16,7 @@ from schorl.model.arrays import Counts, Floats
 NEIGHBOURS = 6
 PERMUTATIONS = 999
 #: At or below this the field counts as structured (`scripts/quality.py zones` shows what it does).
-GATE_P = 0.01
+GATE_P = 0.02
 #: Differences this small between two statistics, as a share, are rounding, not order.
 ROUNDING = 1e-12
 LEAST_SAMPLES = 5

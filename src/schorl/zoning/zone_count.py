@@ -16,7 +16,7 @@ from schorl.zoning.structure import GATE_P
 
 MOST_ZONES = 5
 #: The least share of the flat rate's expected loss that zones must save.
-GATE_SAVING = 0.08
+GATE_SAVING = 0.06
 #: Share of the best saving that the chosen number must reach.
 ENOUGH = 0.85
 LEAST_SAMPLES = 15
@@ -105,7 +105,7 @@ def enough_zones(savings: Mapping[int, float]) -> int:
 def gate_open(savings: Mapping[int, float], p: float) -> bool:
     """Whether zones are worth drawing.
 
-    Need and soil are structured (p at most 0.01), and the best map saves at least 8 % of the flat
+    Need and soil are structured (p at most 0.02), and the best map saves at least 6 % of the flat
     rate's expected loss.
     """
     return p <= GATE_P and max(savings.values(), default=0.0) >= GATE_SAVING

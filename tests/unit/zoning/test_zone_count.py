@@ -20,10 +20,10 @@ GOOD = {1: 0.0, 2: 0.20, 3: 0.27, 4: 0.30, 5: 0.31}
     ("savings", "p", "is_open"),
     [
         (GOOD, 0.002, True),
-        (GOOD, 0.01, True),
-        (GOOD, 0.011, False),  # no pattern in need and soil
-        ({1: 0.0, 2: 0.05, 3: 0.079}, 0.002, False),  # nothing gained
-        ({1: 0.0, 2: 0.05, 3: 0.08}, 0.002, True),
+        (GOOD, 0.02, True),
+        (GOOD, 0.021, False),  # no pattern in need and soil
+        ({1: 0.0, 2: 0.05, 3: 0.059}, 0.002, False),  # nothing gained
+        ({1: 0.0, 2: 0.05, 3: 0.06}, 0.002, True),
         ({1: 0.0}, 0.002, False),  # no map at all
     ],
 )
