@@ -17,7 +17,7 @@ WIDTH = 80
 
 #: What ruled a rate, as the end of "held by ...".
 RULED: Mapping[Limit, str] = {
-    Limit.NEED: "what the soil test asks for",
+    Limit.NEED: "what is asked for",
     Limit.RATE_CAP: "the rate cap of crop and placement",
     Limit.ABSOLUTE: "the absolute limit of one pass",
     Limit.CARRY_OVER: "boron given earlier",
