@@ -8,8 +8,9 @@ import pytest
 from pykrige.ok import OrdinaryKriging
 
 from schorl.geostat import Variogram, krige
-from schorl.geostat.kriging import Targets, krige_global
+from schorl.geostat.kriging import krige_global
 from schorl.geostat.support import layout_of
+from schorl.geostat.system import Targets
 
 
 def case(seed, count=40):

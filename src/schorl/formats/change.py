@@ -14,8 +14,8 @@ import numpy as np
 import shapely
 
 from schorl.agronomy.cautions import cautions
-from schorl.formats.pack import sealed, write_json
 from schorl.formats.rasters import NODATA
+from schorl.formats.sealing import sealed, write_json
 from schorl.formats.vectors import quoted, write_layers
 from schorl.formats.whole_folder import Rows, listed, put_folder, sha256_of
 from schorl.geodesy import WGS84, transform_geometry, transform_points

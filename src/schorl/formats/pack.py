@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -10,6 +9,8 @@ from typing import Any
 
 from schorl.errors import OutputProblem
 from schorl.findings import finding
+from schorl.formats.sealing import sealed, write_json
+from schorl.formats.verify import verify
 from schorl.formats.whole_folder import Rows, listed, put_folder, sha256_of
 from schorl.formats.writing import safe_name
 from schorl.model.record import RunRecord
@@ -111,27 +112,6 @@ def _write_files(record: RunRecord, folder: Path, extras: Mapping[str, bytes]) -
     write_json(folder / "summary.json", summary(record))
 
 
-SEAL = "sha256_of_the_rest"
-
-
-def sealed(document: Mapping[str, Any]) -> dict[str, Any]:
-    """A manifest with a checksum of its own, since nothing else vouches for it."""
-    rest = {key: value for key, value in document.items() if key != SEAL}
-    text = json.dumps(rest, sort_keys=True, allow_nan=False, ensure_ascii=False)
-    return rest | {SEAL: sha256_of(text.encode("utf-8"))}
-
-
-def json_bytes(document: Mapping[str, Any]) -> bytes:
-    """A JSON document with sorted keys and nothing JSON does not know."""
-    text = json.dumps(document, indent=1, sort_keys=True, allow_nan=False, ensure_ascii=False)
-    return (text + "\n").encode("utf-8")
-
-
-def write_json(path: Path, document: Mapping[str, Any]) -> None:
-    """Write a JSON document."""
-    path.write_bytes(json_bytes(document))
-
-
 def _manifest(record: RunRecord, files: Sequence[tuple[str, int, str]]) -> dict[str, Any]:
     settings = record.settings
     return {
@@ -161,8 +141,6 @@ def _plain(value: Any) -> Any:
 
 
 def _read_back(folder: Path) -> None:
-    from schorl.formats.verify import verify
-
     seen = verify(folder)
     if not seen.whole:
         raise OutputProblem(

@@ -14,6 +14,7 @@ import shapely
 
 from schorl.formats.reading import RATE_STEP, Fault, FileZone, FileZones, read_zones
 from schorl.formats.reading_grid import treated_outside
+from schorl.formats.sealing import json_bytes, sealed
 from schorl.formats.whole_folder import complete_swaps
 from schorl.formats.writing import safe_name
 from schorl.geodesy import WGS84, area_ha, field_crs, transform_geometry
@@ -132,8 +133,6 @@ def _records(folder: Path) -> tuple[list[Fault], dict[str, Any] | None, dict[str
 
 def _sealed(folder: Path, manifest: dict[str, Any]) -> bool:
     """Whether a manifest is the one that was written, to the byte."""
-    from schorl.formats.pack import json_bytes, sealed
-
     try:
         return json_bytes(sealed(manifest)) == (folder / "manifest.json").read_bytes()
     except ValueError:  # numbers that JSON does not know

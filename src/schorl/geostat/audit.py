@@ -13,8 +13,9 @@ from collections.abc import Sequence
 import numpy as np
 
 from schorl.geostat.covariance import correlation_in_place, distances
-from schorl.geostat.kriging import GLOBAL_UP_TO, Targets, block_offsets, replace_turn
+from schorl.geostat.kriging import GLOBAL_UP_TO
 from schorl.geostat.support import data_covariance, layout_of
+from schorl.geostat.system import Targets, block_offsets, replace_turn
 from schorl.model.arrays import Floats
 from schorl.model.surface import Audit
 from schorl.model.variogram import Support, Variogram

@@ -6,8 +6,8 @@ import numpy as np
 from scipy.spatial import cKDTree
 
 from schorl.geostat.covariance import correlation_in_place
-from schorl.geostat.kriging import SAME_PLACE_M, System, Targets, replace_turn, sample_to_target
 from schorl.geostat.support import Layout, layout_of
+from schorl.geostat.system import SAME_PLACE_M, System, Targets, replace_turn, sample_to_target
 from schorl.geostat.threads import Room, for_each
 from schorl.model.arrays import Floats
 from schorl.model.variogram import Support, Variogram
