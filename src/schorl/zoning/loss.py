@@ -21,7 +21,7 @@ ROOT_TWO_PI = float(np.sqrt(2.0 * np.pi))
 CERTAIN = 1e-9
 BISECTIONS = 40
 #: Root-mean-square error of the predicted saving by number of samples, see `saving_range`.
-SAVING_ERROR = ((10.0, 0.15), (30.0, 0.09), (60.0, 0.06), (120.0, 0.05))
+SAVING_ERROR = ((10.0, 0.15), (30.0, 0.11), (60.0, 0.09), (120.0, 0.07))
 
 
 def expected_short(rate: Floats | float, mean: Floats, sd: Floats) -> Floats:

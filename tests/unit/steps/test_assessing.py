@@ -333,3 +333,21 @@ def test_a_regions_classes_for_the_samples_extraction_stand_in_for_the_target():
     assert {"RATE-REGION-METHOD", "RATE-METHOD"} <= codes
     only = refused(samples=other, region="new jersey", interpretation=table["interpretation"])
     assert only == {"RATE-METHOD"}  # the ceiling is still for hot water
+
+
+def test_limits_of_ones_own_need_no_clay():
+    own = {"interpretation": Interpretation.OWN, "target_mg_kg": 0.9, "bulk_density_g_cm3": 1.3}
+    bare = sampled(0.5)
+    found = assessed(samples=bare, soil={}, ceiling_mg_kg=2.0, **own)
+    assert found.need.target_mg_kg == pytest.approx(0.9)
+    assert "RATE-CLAY" in refused(samples=bare, soil={}, **own)
+    assert "RATE-CLAY" in refused(
+        samples=bare, soil={}, ceiling_mg_kg=2.0, bulk_density_g_cm3=1.3
+    )  # fmt: skip
+
+
+def test_doubt_of_the_target_is_counted_upwards():
+    """Where the line ends, more clay asks for no more: less clay would."""
+    table = LINE | {"bulk_density_g_cm3": 1.3}
+    end = of_cells(0.5, 70.0, clay_sd=20.0, of_crop=table).need
+    assert end.boron_sd == pytest.approx(0.1)
