@@ -31,7 +31,7 @@ def main(arguments: list[str]) -> int:
     if arguments[:1] == ["--here"]:
         return _measure(arguments[1])
     print(
-        f"{'cells':>9}{'least s':>9}{'median s':>10}{'rates s':>9}{'peak MB':>9}{'zones':>7}  target"
+        f"{'cells':>9}{'least s':>9}{'median s':>10}{'cpu s':>8}{'rates s':>9}{'peak MB':>9}{'zones':>7}  target"
     )
     for size in arguments or list(SIZES):
         command = [sys.executable, str(SCRIPTS / "bench.py"), "zones", "--here", size]
