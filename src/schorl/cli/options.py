@@ -50,7 +50,12 @@ FACTS: tuple[tuple[str, str, Any, str], ...] = (
     ("--depth-cm", "samples.depth_cm", float, "Sampling depth."),
     ("--method", "samples.method", str, 'Boron extraction: "hot water", "mehlich-3", ...'),
     ("--laboratory", "samples.laboratory", str, "Name of the laboratory, for the record."),
-    ("--lab-sd-pct", "samples.lab_relative_sd_pct", float, "Laboratory repeatability, %."),
+    (
+        "--lab-sd-pct",
+        "samples.lab_relative_sd_pct",
+        float,
+        "Laboratory repeatability, % [`schorl tables limits`].",
+    ),
     ("--clay-pct", "samples.clay_pct", float, "One clay figure for the whole field."),
     ("--organic-matter-pct", "samples.organic_matter_pct", float, "One organic matter figure."),
     ("--cores", "samples.cores", int, "Cores in each composite."),

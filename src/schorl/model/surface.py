@@ -57,7 +57,8 @@ class Surface:
 
     ``estimate`` is the expected value of a cell in the property's unit. ``location``, ``map_sd``
     and ``decision_sd`` describe its distribution on the fitted scale: normal where ``transform``
-    is "identity", lognormal where it is "log" (location and SDs are then of the logarithm).
+    is "identity", lognormal where it is "log" (location and SDs are then of the logarithm). The
+    SDs are widened for the samples the variogram was fitted to; the estimate is not.
     ``map_sd`` is the block kriging SD without nugget (for features, audit and maps);
     ``decision_sd`` adds real short-range variation that plants meet (for every chance and rate).
     A declared constant has ``fit`` and ``quality`` None and both SDs 0.

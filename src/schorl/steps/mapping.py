@@ -275,9 +275,9 @@ def prediction_factor(samples: int) -> float:
     """By how much variances at new places exceed those of a variogram that were known: above 1.
 
     The variance of n values around a fitted mean predicts with (n - 1) / (n - 3) of itself
-    (Student); range and nugget are fitted too, if held by priors. With (n - 1) / (n - 4), tenths
-    of 60 real field-properties left out of every fit deviated 1.09 times as much as told, 1.15
-    times without it (``scripts/quality.py surfaces``).
+    (Student); range and nugget are fitted too, if held by priors. With (n - 1) / (n - 4), the
+    squared deviations of left-out tenths of 60 real field-properties were 1.09 times the variance
+    told, 1.15 times without it (``scripts/quality.py surfaces``).
     """
     return (samples - 1) / max(samples - FITTED, 2.0)
 
